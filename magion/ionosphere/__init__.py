@@ -1,1 +1,1 @@
-"""."""
+"""Electron density and collision frequency: layers, profiles, climatology."""

@@ -1,0 +1,250 @@
+"""Electron density against height, as rays read it.
+
+A table of uniform cubic B-splines: two continuous derivatives, one gather and
+a cubic polynomial a point, and several profiles side by side so that rays of
+different hours share one batch.
+"""
+
+from collections.abc import Callable, Sequence
+from dataclasses import dataclass
+from typing import Final
+
+import numpy as np
+
+from magion.arrays import FloatArray, IntArray
+from magion.constants import EARTH_RADIUS
+from magion.ionosphere.layers import (
+    BASE,
+    TOP,
+    LayerParameters,
+    frequency_of_density,
+    layered_density,
+)
+
+SPACING: Final = 250.0
+"""Distance of the spline's nodes [m]."""
+
+_TO_POLYNOMIAL = (
+    np.array(
+        [[1.0, 4.0, 1.0, 0.0], [-3.0, 0.0, 3.0, 0.0], [3.0, -6.0, 3.0, 0.0], [-1.0, 3.0, -3.0, 1.0]]
+    )
+    / 6.0
+)
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class VerticalProfiles:
+    """One or several vertical profiles N(h), the same everywhere on the Earth.
+
+    Parameters
+    ----------
+    base, top : float
+        Lowest and greatest height with plasma [m].
+    polynomials : ndarray, shape (profiles, cells, 4)
+        Coefficients of 1, t, t², t³ in each cell, t from 0 to 1 [m⁻³].
+    """
+
+    base: float
+    top: float
+    polynomials: FloatArray
+
+    def at_height(
+        self, height: FloatArray, which: IntArray | int = 0
+    ) -> tuple[FloatArray, FloatArray]:
+        """Electron density and its slope at heights.
+
+        Parameters
+        ----------
+        height : ndarray, shape (n,)
+            Heights above the sphere [m].
+        which : ndarray of int, shape (n,), or int
+            Which profile.
+
+        Returns
+        -------
+        electron_density : ndarray, shape (n,)
+            Electron density, 0 outside base and top [m⁻³].
+        slope : ndarray, shape (n,)
+            dN/dh [m⁻⁴].
+        """
+        x = (height - self.base) * (1.0 / SPACING)
+        cells = self.polynomials.shape[1]
+        x = np.clip(x, 0.0, cells)
+        cell = np.minimum(x.astype(np.intp), cells - 1)
+        t = x - cell
+        c0, c1, c2, c3 = self.polynomials[which, cell].T
+        density = ((c3 * t + c2) * t + c1) * t + c0
+        slope = ((3.0 * c3 * t + 2.0 * c2) * t + c1) * (1.0 / SPACING)
+        return density, slope
+
+    def density(self, position: FloatArray, which: IntArray) -> tuple[FloatArray, FloatArray]:
+        """Electron density and its gradient at positions.
+
+        Parameters
+        ----------
+        position : ndarray, shape (3, n)
+            Earth-centred positions [m].
+        which : ndarray of int, shape (n,)
+            Which profile.
+
+        Returns
+        -------
+        electron_density : ndarray, shape (n,)
+            Electron density [m⁻³].
+        gradient : ndarray, shape (3, n)
+            Its gradient [m⁻⁴].
+        """
+        x, y, z = position
+        radius = np.sqrt(x * x + y * y + z * z)
+        density, slope = self.at_height(radius - EARTH_RADIUS, which)
+        return density, position * (slope / radius)
+
+    def peak(self, which: int = 0) -> tuple[float, float]:
+        """Greatest density of a profile and its height.
+
+        Parameters
+        ----------
+        which : int
+            Which profile.
+
+        Returns
+        -------
+        electron_density : float
+            Density at the peak [m⁻³].
+        height : float
+            Height of the peak [m].
+        """
+        return self._peak_within(self.base, self.top, which)
+
+    def _peak_within(self, low: float, high: float, which: int) -> tuple[float, float]:
+        h = np.arange(low, high, 10.0)
+        density, _ = self.at_height(h, which)
+        best = int(np.argmax(density))
+        return float(density[best]), float(h[best])
+
+    def e_peak(self, which: int = 0) -> tuple[float, float] | None:
+        """Greatest density of the E region, where it has a peak of its own.
+
+        Parameters
+        ----------
+        which : int
+            Which profile.
+
+        Returns
+        -------
+        tuple of float or None
+            Density [m⁻³] and height [m] of the highest local maximum between
+            90 and 150 km; None if the density only rises there.
+        """
+        low, high = max(self.base, 90e3), min(self.top, 150e3)
+        if high <= low:
+            return None
+        density, height = self._peak_within(low, high, which)
+        return (density, height) if low + 20.0 < height < high - 20.0 else None
+
+
+def _splined(samples: FloatArray) -> FloatArray:
+    """Cell polynomials from spline coefficients, two of them beyond each end."""
+    window = np.stack([samples[..., i : samples.shape[-1] - 3 + i] for i in range(4)], axis=-1)
+    return np.asarray(window @ _TO_POLYNOMIAL.T)
+
+
+def tabulated(
+    functions: Sequence[Callable[[FloatArray], FloatArray]],
+    base: float,
+    top: float,
+    *,
+    interpolate: bool,
+) -> VerticalProfiles:
+    """Profiles from functions of height.
+
+    Parameters
+    ----------
+    functions : sequence of callable
+        Each takes heights [m] and returns electron densities [m⁻³].
+    base, top : float
+        Range of heights; beyond it the density is taken as zero [m].
+    interpolate : bool
+        True to meet the function to fourth order of the spacing; False for the
+        variation-diminishing spline, which never overshoots.
+
+    Returns
+    -------
+    VerticalProfiles
+        The profiles.
+    """
+    cells = max(int(np.ceil((top - base) / SPACING)), 4)
+    h = base + SPACING * np.arange(-2, cells + 3)
+    samples = np.stack([np.where((h < base) | (h > top), 0.0, f(h)) for f in functions])
+    coefficients = samples[:, 1:-1]
+    if interpolate:
+        bend = samples[:, 2:] - 2.0 * samples[:, 1:-1] + samples[:, :-2]
+        coefficients = np.maximum(coefficients - bend / 6.0, 0.0)
+    return VerticalProfiles(
+        base=base, top=base + SPACING * cells, polynomials=_splined(coefficients)
+    )
+
+
+def profiles_of_layers(layers: Sequence[LayerParameters]) -> VerticalProfiles:
+    """Profiles of layer parameters, 60 to 600 km.
+
+    Parameters
+    ----------
+    layers : sequence of LayerParameters
+        One for each profile.
+
+    Returns
+    -------
+    VerticalProfiles
+        The profiles.
+    """
+    return tabulated(
+        [lambda h, one=one: layered_density(h, one) for one in layers],
+        BASE,
+        TOP,
+        interpolate=True,
+    )
+
+
+def measured_profile(height: FloatArray, electron_density: FloatArray) -> VerticalProfiles:
+    """A measured profile as it stands: monotone between its rows, zero outside.
+
+    Parameters
+    ----------
+    height : ndarray, shape (n,)
+        Strictly increasing heights [m].
+    electron_density : ndarray, shape (n,)
+        Densities at them [m⁻³].
+
+    Returns
+    -------
+    VerticalProfiles
+        The profile.
+    """
+    from scipy.interpolate import PchipInterpolator
+
+    curve = PchipInterpolator(height, electron_density, extrapolate=True)
+    return tabulated(
+        [lambda h: np.maximum(curve(h), 0.0)],
+        float(height[0]),
+        float(height[-1]),
+        interpolate=False,
+    )
+
+
+def critical_frequency(profiles: VerticalProfiles, which: int = 0) -> float:
+    """Critical frequency of the ordinary wave at a profile's peak.
+
+    Parameters
+    ----------
+    profiles : VerticalProfiles
+        The profiles.
+    which : int
+        Which one.
+
+    Returns
+    -------
+    float
+        Plasma frequency at the peak [Hz].
+    """
+    return float(frequency_of_density(profiles.peak(which)[0]))
