@@ -8,7 +8,7 @@ box and every ray reads a Chebyshev fit with an analytic gradient.
 import math
 from dataclasses import dataclass
 from datetime import UTC, datetime
-from typing import Final
+from typing import Final, Protocol
 
 import numpy as np
 from numpy.polynomial import chebyshev
@@ -28,6 +28,27 @@ LARGEST_RESIDUAL: Final = 5e-9
 """Largest difference a fit may leave to the field model [T]."""
 
 _POLE_MARGIN = 1e-7  # degrees; at 90 itself the synthesis divides by zero
+
+
+class MagneticField(Protocol):
+    """A magnetic field in space, with its gradient."""
+
+    def at(self, position: FloatArray) -> tuple[FloatArray, FloatArray]:
+        """Field and gradient at points.
+
+        Parameters
+        ----------
+        position : ndarray, shape (3, n)
+            Earth-centred positions [m].
+
+        Returns
+        -------
+        field : ndarray, shape (3, n)
+            Flux density in Earth-centred axes [T].
+        gradient : ndarray, shape (3, 3, n)
+            Derivative of component i along axis j at [i, j] [T/m].
+        """
+        ...
 
 
 def require_date(when: datetime) -> datetime:
@@ -193,7 +214,7 @@ class FieldFit:
     """A smooth fit of the field over the region of a path.
 
     The fit runs in three coordinates of the path: the angle along its great
-    circle, the angle across it, and the height. Outside its box the field of
+    circle, the sine of the angle across it, and the height. Outside its box the field of
     the nearest point of the box is used.
 
     Parameters
@@ -201,12 +222,12 @@ class FieldFit:
     axes : ndarray, shape (3, 3)
         Rows: unit vectors to the path's middle, along it there, and across [1].
     low, high : ndarray, shape (3,)
-        Box: along [rad], across [rad], height [m].
+        Box: along [rad], sine across [1], height [m].
     exponents : ndarray of int, shape (3, terms)
         Chebyshev degrees of each term along the three coordinates [1].
     coefficients : ndarray, shape (12, terms)
         For each Cartesian component of B and of its derivatives along the
-        three coordinates [T, T/rad, T/rad, T/m].
+        three coordinates [T, T/rad, T, T/m].
     residual : float
         Largest difference to the field model at points between the fitted
         ones [T].
@@ -221,6 +242,11 @@ class FieldFit:
     coefficients: FloatArray
     residual: float
     model: str = MODEL
+
+    @property
+    def degree(self) -> int:
+        """Greatest degree of the fit along any coordinate [1]."""
+        return int(self.exponents.max())
 
     def at(self, position: FloatArray) -> tuple[FloatArray, FloatArray]:
         """Field and its gradient at points.
@@ -237,39 +263,35 @@ class FieldFit:
         gradient : ndarray, shape (3, 3, n)
             Derivative of component i along axis j at [i, j] [T/m].
         """
-        c, t, n = self.axes @ position
+        path = self.axes @ position
+        c, t, n = path
         ring = c * c + t * t
-        rho = np.sqrt(ring)
-        radius = np.sqrt(ring + n * n)
-        coordinates = np.empty((3, *c.shape))
+        square = ring + n * n
+        radius = np.sqrt(square)
+        coordinates = np.empty_like(path)
         np.arctan2(t, c, out=coordinates[0])
-        np.arctan2(n, rho, out=coordinates[1])
+        np.divide(n, radius, out=coordinates[1])
         np.subtract(radius, EARTH_RADIUS, out=coordinates[2])
         scale = 2.0 / (self.high - self.low)
-        x = (coordinates - self.low[:, None]) * scale[:, None] - 1.0
-        inside = np.abs(x) <= 1.0
-        np.clip(x, -1.0, 1.0, out=x)
-        table = _chebyshev_table(x, int(self.exponents.max()))
-        basis = table[self.exponents[0], 0]
-        basis *= table[self.exponents[1], 1]
-        basis *= table[self.exponents[2], 2]
+        x = coordinates * scale[:, None] - (self.low * scale + 1.0)[:, None]
+        table = _chebyshev_table(np.minimum(np.maximum(x, -1.0), 1.0), self.degree)
+        basis = table[:, 0].take(self.exponents[0], axis=0)
+        basis *= table[:, 1].take(self.exponents[1], axis=0)
+        basis *= table[:, 2].take(self.exponents[2], axis=0)
         values = (self.coefficients @ basis).reshape(4, 3, -1)
         # Gradients of the three coordinates, in path axes and then turned.
-        slope = np.zeros((3, 3, c.size))
-        slope[0, 0] = -t / ring
-        slope[0, 1] = c / ring
-        across = n / (radius * radius * rho)
-        slope[1, 0] = -c * across
-        slope[1, 1] = -t * across
-        slope[1, 2] = rho / (radius * radius)
-        slope[2, 0] = c / radius
-        slope[2, 1] = t / radius
-        slope[2, 2] = n / radius
-        slope *= inside[:, None, :]
+        upward = path / radius
+        slope = np.empty((3, *path.shape))
+        np.divide(-t, ring, out=slope[0, 0])
+        np.divide(c, ring, out=slope[0, 1])
+        slope[0, 2] = 0.0
+        np.multiply(upward, -n / square, out=slope[1])
+        slope[1, 2] += 1.0 / radius
+        slope[2] = upward
+        if np.abs(x).max() > 1.0:
+            slope *= (np.abs(x) <= 1.0)[:, None, :]
         turned = self.axes.T @ slope
-        gradient = values[1][:, None] * turned[0]
-        gradient += values[2][:, None] * turned[1]
-        gradient += values[3][:, None] * turned[2]
+        gradient = np.einsum("min,mjn->ijn", values[1:], turned)
         return values[0], gradient
 
 
@@ -319,8 +341,8 @@ def fit_field(
     along = math.cos(angle / 2.0) * tangent - math.sin(angle / 2.0) * start
     axes = np.stack([middle, along, np.cross(middle, along)])
     half = np.array([angle / 2.0 + margin / EARTH_RADIUS, margin / EARTH_RADIUS])
-    low = np.array([-half[0], -half[1], 0.0])
-    high = np.array([half[0], half[1], top])
+    low = np.array([-half[0], -math.sin(half[1]), 0.0])
+    high = np.array([half[0], math.sin(half[1]), top])
     along_degree = max(4, math.ceil(3.0 + 4.5 * half[0]))
     for extra in range(5):
         degrees = (along_degree + 2 * extra, 4 + extra, 4 + extra // 2)
@@ -335,7 +357,8 @@ def fit_field(
 def _model_on_box(axes: FloatArray, points: FloatArray, when: datetime) -> FloatArray:
     """Field model at box coordinates (3, n), in Earth-centred axes [T]."""
     u, v, h = points
-    direction = axes.T @ np.stack([np.cos(v) * np.cos(u), np.cos(v) * np.sin(u), np.sin(v)])
+    ring = np.sqrt(1.0 - v * v)
+    direction = axes.T @ np.stack([ring * np.cos(u), ring * np.sin(u), v])
     latitude = np.arctan2(direction[2], np.hypot(direction[0], direction[1]))
     longitude = np.arctan2(direction[1], direction[0])
     east, north, up = local_axes(latitude, longitude)

@@ -27,9 +27,9 @@ from dataclasses import dataclass
 from enum import Enum
 
 import numpy as np
-from numpy.typing import ArrayLike, NDArray
+from numpy.typing import ArrayLike
 
-from magion.arrays import ComplexArray, FloatArray, as_floats
+from magion.arrays import BoolArray, ComplexArray, FloatArray, as_floats
 from magion.constants import (
     GYROFREQUENCY_PER_TESLA,
     PLASMA_FREQUENCY_SQUARED_PER_DENSITY,
@@ -397,7 +397,7 @@ def group_index(X: ArrayLike, Y: ArrayLike, theta: ArrayLike) -> tuple[FloatArra
 
 
 def index_squared_and_slopes(
-    X: FloatArray, t: FloatArray, s: FloatArray, extraordinary: NDArray[np.bool_]
+    X: FloatArray, t: FloatArray, s: FloatArray, extraordinary: BoolArray
 ) -> tuple[FloatArray, FloatArray, FloatArray, FloatArray]:
     """Collisionless n² of one wave a point, with its first derivatives.
 
@@ -420,25 +420,43 @@ def index_squared_and_slopes(
     by_x, by_t, by_s : ndarray
         Derivatives of n² by X, by Y_T² at fixed Y_L², and by Y_L² at fixed Y_T² [1].
     """
+    with np.errstate(divide="ignore", invalid="ignore"):
+        return fast_slopes(X, t, s, extraordinary)
+
+
+def fast_slopes(
+    X: FloatArray, t: FloatArray, s: FloatArray, extraordinary: BoolArray
+) -> tuple[FloatArray, FloatArray, FloatArray, FloatArray]:
+    """:func:`index_squared_and_slopes` for loops that have silenced NumPy already.
+
+    Parameters
+    ----------
+    X, t, s, extraordinary
+        As there [1].
+
+    Returns
+    -------
+    square, by_x, by_t, by_s : ndarray
+        As there [1].
+    """
     a = 1.0 - X
     half = 0.5 * t
     sa = s * a
-    root = np.sqrt(half * half + sa * a)
-    root = np.maximum(root, 1e-300)
+    root = np.maximum(np.sqrt(half * half + sa * a), 1e-300)
     q = root + half
-    over_root = 1.0 / root
-    q_x = -sa * over_root
-    q_t = (0.5 * half) * over_root + 0.5
-    q_s = (0.5 * a * a) * over_root
-    # ordinary: n² = 1 − X q / W; extraordinary: n² = 1 − X a / M
-    denominator = np.where(extraordinary, a - q, q + sa)
-    with np.errstate(divide="ignore", invalid="ignore"):
-        inverse = 1.0 / denominator
-        ratio = np.where(extraordinary, a, q) * inverse
-        common = X * inverse * inverse
-        by_x = common * np.where(extraordinary, -q - a * q_x, -s * (q_x * a + q)) - ratio
-        by_t = common * np.where(extraordinary, -a * q_t, -q_t * sa)
-        by_s = common * np.where(extraordinary, -a * q_s, a * (q - q_s * s))
+    over_root = 0.5 / root
+    q_x = -2.0 * sa * over_root
+    q_t = half * over_root + 0.5
+    q_s = a * a * over_root
+    # ordinary: n² = 1 − X q / (q + s a); extraordinary: n² = 1 − X a / (a − q)
+    inverse = 1.0 / np.where(extraordinary, a - q, q + sa)
+    ratio = np.where(extraordinary, a, q) * inverse
+    common = X * inverse * inverse
+    factor = common * np.where(extraordinary, -a, -sa)
+    by_x = common * np.where(extraordinary, -q, -s * q) - ratio
+    by_x += factor * q_x
+    by_t = factor * q_t
+    by_s = factor * q_s + np.where(extraordinary, 0.0, common * a * q)
     return 1.0 - X * ratio, by_x, by_t, by_s
 
 

@@ -67,14 +67,15 @@ class VerticalProfiles:
         slope : ndarray, shape (n,)
             dN/dh [m⁻⁴].
         """
-        x = (height - self.base) * (1.0 / SPACING)
         cells = self.polynomials.shape[1]
-        x = np.clip(x, 0.0, cells)
+        x = np.minimum(np.maximum((height - self.base) * (1.0 / SPACING), 0.0), cells)
         cell = np.minimum(x.astype(np.intp), cells - 1)
         t = x - cell
-        c0, c1, c2, c3 = self.polynomials[which, cell].T
-        density = ((c3 * t + c2) * t + c1) * t + c0
-        slope = ((3.0 * c3 * t + 2.0 * c2) * t + c1) * (1.0 / SPACING)
+        rows = self.polynomials.reshape(-1, 4).take(cell + which * cells, axis=0)
+        c0, c1, c2, c3 = rows.T
+        cubic = c3 * t
+        density = ((cubic + c2) * t + c1) * t + c0
+        slope = ((3.0 * cubic + 2.0 * c2) * t + c1) * (1.0 / SPACING)
         return density, slope
 
     def density(self, position: FloatArray, which: IntArray) -> tuple[FloatArray, FloatArray]:
@@ -94,8 +95,7 @@ class VerticalProfiles:
         gradient : ndarray, shape (3, n)
             Its gradient [m⁻⁴].
         """
-        x, y, z = position
-        radius = np.sqrt(x * x + y * y + z * z)
+        radius = np.sqrt(np.einsum("in,in->n", position, position))
         density, slope = self.at_height(radius - EARTH_RADIUS, which)
         return density, position * (slope / radius)
 

@@ -11,9 +11,9 @@ import numpy as np
 
 from magion.arrays import BoolArray, FloatArray, IntArray, dot
 from magion.constants import EARTH_RADIUS
-from magion.field import FieldFit
+from magion.field import MagneticField
 from magion.ionosphere.medium import Medium
-from magion.rays.equations import STATE, RaySet, derivative
+from magion.rays.equations import STATE, RaySet, derivative_and_hamiltonian
 
 _A = (
     (1 / 5,),
@@ -36,7 +36,8 @@ DIRECTION_TOLERANCE = 1e-6
 
 _FIRST_STEP = 4e3
 _LONGEST_STEP = 60e3
-_SHORTEST_STEP = 1e-4
+_SHORTEST_STEP = 1e-3
+_ENERGY = 20.0
 _MOST_ROUNDS = 3000
 
 
@@ -49,8 +50,11 @@ class Fate(IntEnum):
     ESCAPED = 1
     """It left through the top of the ionosphere."""
 
-    LOST = 2
-    """It was still under way at the greatest group path, or its step vanished."""
+    LONG = 2
+    """It was still under way at the greatest group path."""
+
+    LOST = 3
+    """Its step vanished: it touched the singular point X = 1 with the field along it."""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -151,7 +155,7 @@ def trace(
     direction: FloatArray,
     rays: RaySet,
     medium: Medium,
-    field: FieldFit | None,
+    field: MagneticField | None,
     *,
     longest: float = 15_000e3,
     position_tolerance: float = POSITION_TOLERANCE,
@@ -170,7 +174,7 @@ def trace(
         Frequency, wave and ionosphere of each ray.
     medium : Medium
         Electron density.
-    field : FieldFit or None
+    field : MagneticField or None
         Geomagnetic field; None switches it off.
     longest : float
         Group path after which a ray counts as lost [m].
@@ -213,7 +217,7 @@ def _advance(
     group: FloatArray,
     rays: RaySet,
     medium: Medium,
-    field: FieldFit | None,
+    field: MagneticField | None,
     result: Landing,
     notes: list[tuple[IntArray, FloatArray, FloatArray, FloatArray]],
     longest: float,
@@ -224,7 +228,7 @@ def _advance(
     active = np.arange(state.shape[1])
     step = np.full(active.size, _FIRST_STEP)
     previous = np.full(active.size, 1e-4)
-    slope = derivative(state, rays, medium, field)
+    slope, energy = derivative_and_hamiltonian(state, rays, medium, field)
     radius, climb = _radius_and_climb(state, slope)
     if keep_tracks:
         notes.append((active, group, state, slope))
@@ -237,12 +241,14 @@ def _advance(
         flat = stages.reshape(7, -1)
         for i, weights in enumerate(_WEIGHTS):
             trial = state + (weights @ flat[: i + 1]).reshape(STATE, n) * step
-            stages[i + 1] = derivative(trial, rays, medium, field)
+            stages[i + 1], trial_energy = derivative_and_hamiltonian(trial, rays, medium, field)
         error = np.abs((_ERROR @ flat).reshape(STATE, n) * step)
         size = np.maximum(
             error[0:3].max(axis=0) / position_tolerance,
             error[3:6].max(axis=0) / direction_tolerance,
         )
+        # A ray that slips to the other wave near a singular point shows in p² − n².
+        size = np.maximum(size, np.abs(trial_energy - energy) / (_ENERGY * direction_tolerance))
         size = np.where(np.isfinite(size), size, 1e6)
         accepted = size <= 1.0
         size = np.maximum(size, 1e-6)
@@ -251,6 +257,7 @@ def _advance(
         taken = step * accepted
         state = np.where(accepted, trial, state)
         slope = np.where(accepted, stages[6], slope)
+        energy = np.where(accepted, trial_energy, energy)
         group = group + taken
         radius_before, climb_before = radius, climb
         radius, climb = _radius_and_climb(state, slope)
@@ -265,7 +272,9 @@ def _advance(
         if landed.any():
             _land(result, active[landed], state[:, landed], group[landed])
         result.fate[active[escaped]] = Fate.ESCAPED
-        done = landed | escaped | (group > longest) | (step < _SHORTEST_STEP)
+        long = group > longest
+        result.fate[active[long & ~landed]] = Fate.LONG
+        done = landed | escaped | long | (step < _SHORTEST_STEP)
         # The thin plasma near the base must not fall between the stages of one step.
         thin = _FIRST_STEP + 0.4 * (height - medium.base)
         step = np.minimum(step * factor, np.clip(thin, _FIRST_STEP, _LONGEST_STEP))
@@ -279,7 +288,8 @@ def _advance(
             keep = ~done
             active, step, group = active[keep], step[keep], group[keep]
             state, slope, rays = state[:, keep], slope[:, keep], rays.take(keep)
-            radius, climb, previous = radius[keep], climb[keep], previous[keep]
+            radius, climb, energy = radius[keep], climb[keep], energy[keep]
+            previous = previous[keep]
 
 
 def _radius_and_climb(state: FloatArray, slope: FloatArray) -> tuple[FloatArray, FloatArray]:

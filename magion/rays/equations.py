@@ -15,11 +15,11 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from magion.arrays import BoolArray, FloatArray, IntArray, dot
+from magion.arrays import BoolArray, FloatArray, IntArray
 from magion.constants import GYROFREQUENCY_PER_TESLA, PLASMA_FREQUENCY_SQUARED_PER_DENSITY
-from magion.field import FieldFit
+from magion.field import MagneticField
 from magion.ionosphere.medium import Medium
-from magion.waves import index_squared_and_slopes
+from magion.waves import fast_slopes
 
 STATE = 7
 """Numbers a ray carries: position (3) [m], wave vector p (3) [1], phase path (1) [m]."""
@@ -64,9 +64,29 @@ class RaySet:
 
 
 def derivative(
-    state: FloatArray, rays: RaySet, medium: Medium, field: FieldFit | None
+    state: FloatArray, rays: RaySet, medium: Medium, field: MagneticField | None
 ) -> FloatArray:
     """Right-hand side of the ray equations.
+
+    See :func:`derivative_and_hamiltonian`, which this is without the second part.
+
+    Parameters
+    ----------
+    state, rays, medium, field
+        As there.
+
+    Returns
+    -------
+    ndarray, shape (7, n)
+        Derivatives by the group path [1], [1/m], [1].
+    """
+    return derivative_and_hamiltonian(state, rays, medium, field)[0]
+
+
+def derivative_and_hamiltonian(
+    state: FloatArray, rays: RaySet, medium: Medium, field: MagneticField | None
+) -> tuple[FloatArray, FloatArray]:
+    """Right-hand side of the ray equations, and how well a ray keeps to its wave.
 
     Parameters
     ----------
@@ -76,68 +96,49 @@ def derivative(
         Frequency, wave and ionosphere of each ray.
     medium : Medium
         Electron density.
-    field : FieldFit or None
+    field : MagneticField or None
         Geomagnetic field; None switches it off, and both waves are alike.
 
     Returns
     -------
-    ndarray, shape (7, n)
+    slope : ndarray, shape (7, n)
         Derivatives by the group path [1], [1/m], [1].
+    hamiltonian : ndarray, shape (n,)
+        p² - n², which is zero along a true ray [1].
     """
     r, p = state[0:3], state[3:6]
     density, density_gradient = medium.density(r, rays.which)
     k_x = PLASMA_FREQUENCY_SQUARED_PER_DENSITY / (rays.frequency * rays.frequency)
+    X = k_x * density
     out = np.empty_like(state)
-    p_squared = dot(p, p)
+    p_squared = _dot(p, p)
     if field is None:
         out[0:3] = p
-        out[3:6] = (-0.5 * k_x) * density_gradient
+        np.multiply(density_gradient, -0.5 * k_x, out=out[3:6])
         out[6] = p_squared
         # G = p² + X, which is 1 on the ray; dividing keeps it so off the ray as well.
-        return out / (p_squared + k_x * density)
+        out /= p_squared + X
+        return out, p_squared - 1.0 + X
     flux, flux_gradient = field.at(r)
-    X = k_x * density
     k_y = GYROFREQUENCY_PER_TESLA / rays.frequency
     Y = flux * k_y
-    Y_p = dot(Y, p) / np.maximum(p_squared, 1e-300)  # (Y · p) / p²
+    Y_p = _dot(Y, p) / np.maximum(p_squared, 1e-300)  # (Y · p) / p²
     s = Y_p * Y_p * p_squared
-    t = np.maximum(dot(Y, Y) - s, 0.0)
-    _, by_x, by_t, by_s = index_squared_and_slopes(X, t, s, rays.extraordinary)
+    t = np.maximum(_dot(Y, Y) - s, 0.0)
+    square, by_x, by_t, by_s = fast_slopes(X, t, s, rays.extraordinary)
     swing = (by_s - by_t) * Y_p
-    inverse_g = 1.0 / (p_squared - X * by_x - t * by_t - s * by_s)
     # ∂H/∂p = p − (∂n²/∂Y_L² − ∂n²/∂Y_T²)(Y·p/p²)(Y − (Y·p/p²) p)
-    out[0:3] = (p * (1.0 + swing * Y_p) - Y * swing) * inverse_g
-    lever = Y * by_t + p * swing
-    bend = np.einsum("in,ijn->jn", lever, flux_gradient)
-    out[3:6] = (density_gradient * (0.5 * k_x * by_x) + bend * k_y) * inverse_g
-    out[6] = p_squared * inverse_g
-    return out
+    np.multiply(p, 1.0 + swing * Y_p, out=out[0:3])
+    out[0:3] -= Y * swing
+    lever = Y * (by_t * k_y)
+    lever += p * (swing * k_y)
+    np.einsum("in,ijn->jn", lever, flux_gradient, out=out[3:6])
+    out[3:6] += density_gradient * (0.5 * k_x * by_x)
+    out[6] = p_squared
+    out /= p_squared - X * by_x - t * by_t - s * by_s
+    return out, p_squared - square
 
 
-def hamiltonian(
-    state: FloatArray, rays: RaySet, medium: Medium, field: FieldFit | None
-) -> FloatArray:
-    """p² - n², which is zero along a true ray.
-
-    Parameters
-    ----------
-    state : ndarray, shape (7, n)
-        As for :func:`derivative`.
-    rays, medium, field
-        As for :func:`derivative`.
-
-    Returns
-    -------
-    ndarray, shape (n,)
-        Twice the Hamiltonian [1].
-    """
-    r, p = state[0:3], state[3:6]
-    density, _ = medium.density(r, rays.which)
-    X = PLASMA_FREQUENCY_SQUARED_PER_DENSITY * density / (rays.frequency * rays.frequency)
-    p_squared = dot(p, p)
-    if field is None:
-        return np.asarray(p_squared - 1.0 + X)
-    Y = field.at(r)[0] * (GYROFREQUENCY_PER_TESLA / rays.frequency)
-    s = dot(Y, p) ** 2 / np.maximum(p_squared, 1e-300)
-    t = np.maximum(dot(Y, Y) - s, 0.0)
-    return np.asarray(p_squared - index_squared_and_slopes(X, t, s, rays.extraordinary)[0])
+def _dot(a: FloatArray, b: FloatArray) -> FloatArray:
+    """Scalar product of vectors (3, n) in one call."""
+    return np.asarray(np.einsum("in,in->n", a, b))
