@@ -72,7 +72,8 @@ def require_date(when: datetime) -> datetime:
     instant = as_utc(when)
     if not FIRST_DATE <= instant <= LAST_DATE:
         raise OutsideModelError(
-            f"date {instant:%Y-%m-%d} is outside the field model; accepted: 1900-01-01 to 2030-01-01"
+            f"date {instant:%Y-%m-%d} is outside the field model; "
+            "accepted: 1900-01-01 to 2030-01-01"
         )
     return instant
 
@@ -130,7 +131,7 @@ def dip(field: FloatArray) -> FloatArray:
     ndarray
         Dip (inclination), positive down [rad].
     """
-    return np.arctan2(-field[2], np.hypot(field[0], field[1]))
+    return np.asarray(np.arctan2(-field[2], np.hypot(field[0], field[1])))
 
 
 def declination(field: FloatArray) -> FloatArray:
@@ -146,7 +147,7 @@ def declination(field: FloatArray) -> FloatArray:
     ndarray
         Declination, east of true north, -pi to pi [rad].
     """
-    return np.arctan2(field[0], field[1])
+    return np.asarray(np.arctan2(field[0], field[1]))
 
 
 def flux_density(field: FloatArray) -> FloatArray:
@@ -162,7 +163,7 @@ def flux_density(field: FloatArray) -> FloatArray:
     ndarray
         Total flux density [T].
     """
-    return np.sqrt(field[0] ** 2 + field[1] ** 2 + field[2] ** 2)
+    return np.asarray(np.sqrt(field[0] ** 2 + field[1] ** 2 + field[2] ** 2))
 
 
 def gyrofrequency(magnitude: ArrayLike) -> FloatArray:
@@ -377,7 +378,9 @@ def _fit_box(
     check_axes = [np.cos(np.pi * np.arange(0, d + 2) / (d + 1)) for d in degrees]
     check_axes[1] = check_axes[1][::2]
     check_axes[2] = check_axes[2][::2]
-    grids = [np.stack(np.meshgrid(*a, indexing="ij")).reshape(3, -1) for a in (node_axes, check_axes)]
+    grids = [
+        np.stack(np.meshgrid(*a, indexing="ij")).reshape(3, -1) for a in (node_axes, check_axes)
+    ]
     unit_points = np.concatenate(grids, axis=1)
     points = low[:, None] + (unit_points + 1.0) / 2.0 * (high - low)[:, None]
     truth = _model_on_box(axes, points, when)
@@ -400,5 +403,10 @@ def _fit_box(
     basis = table[0][exponents[0]] * table[1][exponents[1]] * table[2][exponents[2]]
     residual = float(np.max(np.linalg.norm(coefficients[:3] @ basis - truth[:, nodes:], axis=0)))
     return FieldFit(
-        axes=axes, low=low, high=high, exponents=exponents, coefficients=coefficients, residual=residual
+        axes=axes,
+        low=low,
+        high=high,
+        exponents=exponents,
+        coefficients=coefficients,
+        residual=residual,
     )

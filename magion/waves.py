@@ -48,6 +48,11 @@ class Mode(Enum):
         """The other wave."""
         return Mode.EXTRAORDINARY if self is Mode.ORDINARY else Mode.ORDINARY
 
+    @property
+    def letter(self) -> str:
+        """The trade's mark for it, as in 1F2(o) and 1F2(x)."""
+        return "o" if self is Mode.ORDINARY else "x"
+
 
 MODES = (Mode.ORDINARY, Mode.EXTRAORDINARY)
 """Both waves, the ordinary first, as everywhere in magion."""
@@ -128,7 +133,8 @@ def critical_collision_frequency(gyrofrequency: ArrayLike, theta: ArrayLike) -> 
     """
     f_h, angle = as_floats(gyrofrequency, theta)
     with np.errstate(divide="ignore"):
-        return 2.0 * np.pi * f_h * np.sin(angle) ** 2 / (2.0 * np.abs(np.cos(angle)))
+        ratio = np.sin(angle) ** 2 / (2.0 * np.abs(np.cos(angle)))
+    return np.asarray(2.0 * np.pi * f_h * ratio)
 
 
 def _split(
@@ -153,7 +159,7 @@ def _split(
 
 
 def _shape(Y_L: FloatArray, distance: ComplexArray, q: ComplexArray) -> ComplexArray:
-    """h = Y_L (U - X) / q: rho is i h of the ordinary, 1 / (i h) of the extraordinary wave."""
+    """H = Y_L (U - X) / q: rho is i h of the ordinary, 1 / (i h) of the extraordinary wave."""
     h = distance * Y_L
     with np.errstate(divide="ignore", invalid="ignore"):
         h /= q
@@ -343,9 +349,7 @@ def polarization_ratio(
     return ordinary[1] / ordinary[0], rho_x
 
 
-def index_difference(
-    X: ArrayLike, Y: ArrayLike, Z: ArrayLike, theta: ArrayLike
-) -> FloatArray:
+def index_difference(X: ArrayLike, Y: ArrayLike, Z: ArrayLike, theta: ArrayLike) -> FloatArray:
     """Difference of the real indices, mu_O - mu_X, without cancellation at small X.
 
     Parameters
@@ -528,9 +532,7 @@ def limiting_shape(Y: ArrayLike, theta: ArrayLike) -> FloatArray:
     return np.asarray(h / major)
 
 
-def phase_to_go(
-    frequency: float, difference: FloatArray, path_length: FloatArray
-) -> FloatArray:
+def phase_to_go(frequency: float, difference: FloatArray, path_length: FloatArray) -> FloatArray:
     """O-X phase still to be gathered on the way out, at each point of a ray.
 
     Parameters

@@ -1,1 +1,1 @@
-"""."""
+"""Answers: frozen records made from the layers below, one call each."""

@@ -1,1 +1,1 @@
-"""."""
+"""Files that magion reads: parsing with line numbers."""

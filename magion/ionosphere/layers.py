@@ -202,7 +202,7 @@ def chapman(height: FloatArray, peak: float, scale_height: float, zenith: float)
         exp{(1 - z - sec(zenith) exp(-z)) / 2} [1].
     """
     z = (height - peak) / scale_height
-    return np.exp(0.5 * (1.0 - z - np.exp(-z) / np.cos(zenith)))
+    return np.asarray(np.exp(0.5 * (1.0 - z - np.exp(-z) / np.cos(zenith))))
 
 
 def smooth_step(x: FloatArray) -> FloatArray:
@@ -259,6 +259,8 @@ def layered_density(height: FloatArray, layers: LayerParameters) -> FloatArray:
         if missing > 0.0:
             thickness = 0.25 * (layers.hmf1 - layers.hme) + 5e3
             ledge = epstein(height, layers.hmf1, thickness)
-            ledge = ledge * (1.0 - smooth_step((height - layers.hmf1) / (layers.hmf2 - layers.hmf1)))
+            ledge = ledge * (
+                1.0 - smooth_step((height - layers.hmf1) / (layers.hmf2 - layers.hmf1))
+            )
             total = total + layers.f1_share * missing * fade * ledge
     return np.asarray(total * smooth_step((height - BASE) / _ONSET))

@@ -7,6 +7,7 @@ different hours share one batch.
 
 from collections.abc import Callable, Sequence
 from dataclasses import dataclass
+from functools import partial
 from typing import Final
 
 import numpy as np
@@ -174,7 +175,7 @@ def tabulated(
         The profiles.
     """
     cells = max(int(np.ceil((top - base) / SPACING)), 4)
-    h = base + SPACING * np.arange(-2, cells + 3)
+    h: FloatArray = base + SPACING * np.arange(-2.0, cells + 3)
     samples = np.stack([np.where((h < base) | (h > top), 0.0, f(h)) for f in functions])
     coefficients = samples[:, 1:-1]
     if interpolate:
@@ -199,7 +200,7 @@ def profiles_of_layers(layers: Sequence[LayerParameters]) -> VerticalProfiles:
         The profiles.
     """
     return tabulated(
-        [lambda h, one=one: layered_density(h, one) for one in layers],
+        [partial(layered_density, layers=one) for one in layers],
         BASE,
         TOP,
         interpolate=True,
@@ -223,6 +224,8 @@ def measured_profile(height: FloatArray, electron_density: FloatArray) -> Vertic
     """
     from scipy.interpolate import PchipInterpolator
 
+    first = max(int(np.argmax(electron_density > 0.0)) - 1, 0)  # rays run straight below plasma
+    height, electron_density = height[first:], electron_density[first:]
     curve = PchipInterpolator(height, electron_density, extrapolate=True)
     return tabulated(
         [lambda h: np.maximum(curve(h), 0.0)],

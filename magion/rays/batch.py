@@ -24,9 +24,7 @@ _A = (
     (35 / 384, 0.0, 500 / 1113, 125 / 192, -2187 / 6784, 11 / 84),
 )
 _WEIGHTS = [np.array(row) for row in _A]
-_ERROR = np.array(
-    [71 / 57600, 0.0, -71 / 16695, 71 / 1920, -17253 / 339200, 22 / 525, -1 / 40]
-)
+_ERROR = np.array([71 / 57600, 0.0, -71 / 16695, 71 / 1920, -17253 / 339200, 22 / 525, -1 / 40])
 
 POSITION_TOLERANCE = 1.0
 """Error of position accepted in one step [m]."""
@@ -35,7 +33,7 @@ DIRECTION_TOLERANCE = 1e-6
 """Error of p accepted in one step [1]."""
 
 _FIRST_STEP = 4e3
-_LONGEST_STEP = 60e3
+_LONGEST_STEP = 25e3
 _SHORTEST_STEP = 1e-3
 _ENERGY = 20.0
 _MOST_ROUNDS = 3000

@@ -261,7 +261,7 @@ def default_zenith_angles(spacing_deg: float = 1.25) -> FloatArray:
         Zenith angles [rad].
     """
     forward = np.arange(0.0, 89.0, spacing_deg)
-    return np.radians(np.concatenate([[-12.0, -4.0, -1.0], forward, [89.0, 89.6]]))
+    return np.asarray(np.radians(np.concatenate([[-12.0, -4.0, -1.0], forward, [89.0, 89.6]])))
 
 
 def shoot(
@@ -294,6 +294,7 @@ def shoot(
     Landing
         The ends of the rays.
     """
+
     def ends_of(directions: FloatArray, chosen: RaySet) -> Landing:
         return trace(
             np.repeat(link.up[:, None] * EARTH_RADIUS, directions.shape[1], axis=1),

@@ -1,1 +1,1 @@
-"""."""
+"""Records to text, JSON and CSV."""

@@ -1,0 +1,59 @@
+"""``magion path``."""
+
+from datetime import datetime
+from pathlib import Path
+from typing import TYPE_CHECKING, Any
+
+import click
+
+from magion.cli.arguments import (
+    INSTANT,
+    NUMBER,
+    PLACE,
+    ionosphere_from,
+    ionosphere_options,
+    output_options,
+)
+
+if TYPE_CHECKING:
+    from magion.geometry import Place
+
+
+@click.command("path", short_help="which hand each wave arrives with on one path")
+@click.argument("transmitter", metavar="FROM", type=PLACE)
+@click.argument("receiver", metavar="TO", type=PLACE)
+@click.option("-f", "--frequency", type=NUMBER, required=True, help="Frequency [MHz].")
+@click.option("--time", "when", type=INSTANT, help="Time, ISO 8601, UTC; now by default.")
+@ionosphere_options
+@output_options("text", "json", "csv")
+def command(
+    transmitter: "Place",
+    receiver: "Place",
+    frequency: float,
+    when: datetime | None,
+    form: str,
+    output: Path | None,
+    **known: Any,
+) -> None:
+    """Which hand to switch to: FROM transmits, TO (you) receives.
+
+    Places are LAT,LON in decimal degrees (46.50,11.35 or 41.0S,71.3W) or a
+    grid locator of 4, 6 or 8 signs. The same place twice is the vertical case.
+
+    \b
+    Example:
+      magion path 46.50,11.35 JN57rb -f 5.3 --time 2026-06-21T12:00Z --fof2 6.1
+    """  # noqa: D301
+    from magion.answers.path import answer_path
+    from magion.cli.writing import write
+    from magion.render.data import path_rows, to_csv, to_json
+    from magion.render.text import path_text
+
+    answer = answer_path(transmitter, receiver, frequency, when, ionosphere_from(**known))
+    if form == "json":
+        text = to_json(answer)
+    elif form == "csv":
+        text = to_csv(path_rows(answer))
+    else:
+        text = path_text(answer)
+    write(text, output)

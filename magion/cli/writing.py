@@ -1,0 +1,70 @@
+"""Where answers go: the terminal, or a file written whole or not at all."""
+
+import os
+import sys
+import tempfile
+from pathlib import Path
+
+import click
+
+from magion.errors import InputError
+from magion.formats.tables import printable
+
+
+def write(text: str, output: Path | None) -> None:
+    """Write an answer to the terminal or a file.
+
+    Parameters
+    ----------
+    text : str
+        The answer.
+    output : Path or None
+        The file; None for standard output.
+
+    Raises
+    ------
+    InputError
+        If the file cannot be written; what stood there before stays.
+    """
+    if output is None:
+        from magion.render.text import for_encoding
+
+        click.echo(for_encoding(text, getattr(sys.stdout, "encoding", None)), nl=False)
+        return
+    replace_file(output, text.encode("utf-8"))
+
+
+def replace_file(target: Path, content: bytes) -> None:
+    """Put a file in place in one move, with the user's usual permissions.
+
+    Parameters
+    ----------
+    target : Path
+        The file; an existing regular file is replaced.
+    content : bytes
+        What it shall hold.
+
+    Raises
+    ------
+    InputError
+        If it is not a regular file or its folder cannot be written.
+    """
+    name = printable(str(target))
+    if target.is_dir() or (target.exists() and not target.is_file()):
+        raise InputError(f"output {name} is not a regular file")
+    if not target.parent.is_dir():
+        raise InputError(f"output {name}: the folder {printable(str(target.parent))} is missing")
+    try:
+        handle, partial = tempfile.mkstemp(prefix=f".{target.name}.", dir=target.parent)
+        try:
+            with os.fdopen(handle, "wb") as file:
+                file.write(content)
+            mask = os.umask(0)
+            os.umask(mask)
+            os.chmod(partial, target.stat().st_mode if target.exists() else 0o666 & ~mask)
+            os.replace(partial, target)
+        except BaseException:
+            Path(partial).unlink(missing_ok=True)
+            raise
+    except OSError as error:
+        raise InputError(f"output {name}: {error.strerror or 'cannot be written'}") from None

@@ -1,0 +1,283 @@
+"""Records as text: 80 columns, black on white, rounded to what the physics supports."""
+
+import textwrap
+from collections.abc import Callable
+
+from magion.answers.path import End, PathAnswer, RayAnswer, WaveOnPath
+from magion.answers.point import FieldAnswer, OneWave, WaveAnswer
+from magion.polarization import Hand, hand_in_words
+
+WIDTH = 80
+_LABEL = 26
+_COLUMN = 27
+
+_ASCII = str.maketrans(
+    {
+        "°": " deg",
+        "·": ".",
+        "−": "-",
+        "–": "-",
+        "×": "x",
+        "²": "2",
+        "³": "3",
+        "θ": "theta",
+        "μ": "mu",
+        "χ": "chi",
+        "ρ": "rho",
+        "±": "+-",
+        "≤": "<=",
+        "≥": ">=",
+        "…": "...",
+    }
+)
+
+
+def for_encoding(text: str, encoding: str | None) -> str:
+    """Text that a terminal of some encoding can show.
+
+    Parameters
+    ----------
+    text : str
+        Text with the field's signs.
+    encoding : str or None
+        Encoding of the terminal or file.
+
+    Returns
+    -------
+    str
+        The text as it is, or in ASCII where it cannot be shown.
+    """
+    try:
+        text.encode(encoding or "ascii")
+    except (UnicodeEncodeError, LookupError):
+        return text.translate(_ASCII).encode("ascii", "replace").decode()
+    return text
+
+
+def _wrapped(text: str, indent: str = "  ", first: str | None = None) -> list[str]:
+    return textwrap.wrap(
+        text, WIDTH, initial_indent=indent if first is None else first, subsequent_indent=indent
+    )
+
+
+def coordinates(latitude_deg: float, longitude_deg: float) -> str:
+    """A place as an operator reads it.
+
+    Parameters
+    ----------
+    latitude_deg, longitude_deg : float
+        Place [deg].
+
+    Returns
+    -------
+    str
+        Such as ``46.50 N 11.35 E``.
+    """
+    north = "N" if latitude_deg >= 0.0 else "S"
+    east = "E" if longitude_deg >= 0.0 else "W"
+    return f"{abs(latitude_deg):.2f} {north} {abs(longitude_deg):.2f} {east}"
+
+
+def _end(end: End) -> str:
+    place = f"{coordinates(end.latitude_deg, end.longitude_deg)} ({end.locator})"
+    return f"{end.name}, {place}" if end.name else place
+
+
+def _pair(label: str, cells: list[str]) -> str:
+    return (f"  {label:<{_LABEL - 2}}" + "".join(f"{c:<{_COLUMN}}" for c in cells)).rstrip()
+
+
+def path_text(answer: PathAnswer) -> str:
+    """The answer for one path.
+
+    Parameters
+    ----------
+    answer : PathAnswer
+        The answer.
+
+    Returns
+    -------
+    str
+        The line to act on, the two waves side by side, then why.
+    """
+    lines = [*_wrapped(answer.advice.headline, "", ""), ""]
+    path = answer.path
+    lines.append(f"  from  {_end(answer.transmitter)}")
+    lines.append(f"  to    {_end(answer.receiver)}")
+    way = f"{path.distance_km:.0f} km"
+    if path.bearing_deg is not None and path.back_bearing_deg is not None:
+        way += f", bearing {path.bearing_deg:.0f}°, back {path.back_bearing_deg:.0f}°"
+    else:
+        way = "straight up and down"
+    lines.append(f"  {way}; {answer.frequency_mhz:.3f} MHz; {_time(answer.time_utc)}")
+    lines += ["", _pair("", [w.wave.value for w in answer.waves])]
+    lines += _wave_rows(answer)
+    lines += ["", "Why"]
+    lines += _why(answer)
+    if answer.advice.caveats:
+        lines += ["", "Keep in mind"]
+        for caveat in answer.advice.caveats:
+            lines += _wrapped(caveat, "    ", "  - ")
+    return "\n".join(lines) + "\n"
+
+
+def _time(time_utc: str) -> str:
+    return time_utc.replace("T", " ").replace(":00Z", "Z").replace("Z", " UTC")
+
+
+def _wave_rows(answer: PathAnswer) -> list[str]:
+    waves = answer.waves
+
+    def row(label: str, cell: Callable[[WaveOnPath], str | None]) -> list[str]:
+        cells = [cell(w) for w in waves]
+        if all(c is None for c in cells):
+            return []
+        return [_pair(label, [c or "-" for c in cells])]
+
+    def words(hand: Hand | None, which: str) -> str | None:
+        return None if hand is None else str(getattr(hand_in_words(hand), which))
+
+    def fixed(value: float | None, form: str, unit: str) -> str | None:
+        return None if value is None else f"{value:{form}}{unit}"
+
+    rows: list[str] = []
+    rows += row("arrives", lambda w: f"yes, as {w.label}" if w.arrives else "no")
+    rows += row("receive hand (IEEE)", lambda w: _name(w.receive_hand))
+    rows += row("  turns, looking up", lambda w: words(w.receive_hand, "looking_up"))
+    rows += row("  turns, on the map", lambda w: words(w.receive_hand, "on_the_map"))
+    rows += row("  delay line in arm", lambda w: words(w.receive_hand, "delayed_arm"))
+    rows += row("answer with hand", lambda w: _name(w.transmit_hand))
+    rows += row("shape, axial ratio", _shape)
+    rows += row("  major axis (true)", lambda w: fixed(w.major_axis_bearing_deg, ".0f", "°"))
+    rows += row(
+        "comes from azimuth",
+        lambda w: None if w.arrival is None else f"{w.arrival.azimuth_deg:.0f}°",
+    )
+    rows += row(
+        "  at elevation", lambda w: None if w.arrival is None else f"{w.arrival.elevation_deg:.1f}°"
+    )
+    rows += row("leaves with hand", lambda w: None if w.launch is None else w.launch.hand.value)
+    rows += row(
+        "  azimuth, elevation",
+        lambda w: (
+            None
+            if w.launch is None
+            else f"{w.launch.azimuth_deg:.0f}°, {w.launch.elevation_deg:.1f}°"
+        ),
+    )
+    rows += row("delay", lambda w: fixed(w.group_delay_ms, ".3f", " ms"))
+    rows += row("highest at", lambda w: fixed(w.apogee_km, ".0f", " km"))
+    rows += row("absorption", lambda w: fixed(w.absorption_db, ".1f", " dB"))
+    rows += row("level", lambda w: fixed(w.level_db, "+.1f", " dB"))
+    rows += row("MUF", lambda w: fixed(w.muf_mhz, ".2f", " MHz"))
+    rows += row("skip distance", lambda w: fixed(w.skip_km, ".0f", " km"))
+    rows += row("other rays", lambda w: _others(w.rays))
+    return rows
+
+
+def _name(hand: Hand | None) -> str | None:
+    return None if hand is None else hand.value
+
+
+def _shape(wave: WaveOnPath) -> str | None:
+    if wave.shape is None:
+        return None
+    ratio = "over 60 dB" if wave.axial_ratio_db is None else f"{wave.axial_ratio_db:.1f} dB"
+    return f"{wave.shape.value}, {ratio}"
+
+
+def _others(rays: tuple[RayAnswer, ...]) -> str | None:
+    cells = [f"{r.label} {r.arrival.elevation_deg:.0f}°" for r in rays if r.arrival]
+    return ", ".join(cells[:2]) + (", …" if len(cells) > 2 else "") if cells else None
+
+
+def _why(answer: PathAnswer) -> list[str]:
+    lines: list[str] = []
+    for wave in answer.waves:
+        if not wave.arrives:
+            lines += _wrapped(f"The {wave.wave.value} wave does not arrive: {wave.reason}.")
+        elif wave.limiting and wave.receive_hand:
+            place = coordinates(wave.limiting.latitude_deg, wave.limiting.longitude_deg)
+            side = "along" if wave.limiting.field_angle_deg < 90.0 else "against"
+            lines += _wrapped(
+                f"The {wave.wave.value} wave leaves the ionosphere at "
+                f"{wave.limiting.height_km:.0f} km over {place}, running {side} the field "
+                f"({wave.limiting.field_angle_deg:.0f}°): {wave.receive_hand.value}."
+            )
+    field, sky = answer.field, answer.ionosphere
+    lines += _wrapped(
+        f"Field at the midpoint, {field.height_km:.0f} km: {field.flux_density_nt:.0f} nT, dip "
+        f"{field.dip_deg:.1f}°, declination {field.declination_deg:.1f}°, gyrofrequency "
+        f"{field.gyrofrequency_mhz:.3f} MHz ({field.model})."
+    )
+    e_region = "" if sky.foe_mhz is None else f", foE {sky.foe_mhz:.2f} MHz"
+    lines += _wrapped(
+        f"Ionosphere there: foF2 {sky.fof2_mhz:.2f} MHz, fxF2 {sky.fxf2_mhz:.2f} MHz, hmF2 "
+        f"{sky.hmf2_km:.0f} km{e_region} ({sky.source})."
+    )
+    return lines
+
+
+def field_text(answer: FieldAnswer) -> str:
+    """The geomagnetic field at a place.
+
+    Parameters
+    ----------
+    answer : FieldAnswer
+        The answer.
+
+    Returns
+    -------
+    str
+        A small table.
+    """
+    rows = [
+        ("place", coordinates(answer.latitude_deg, answer.longitude_deg)),
+        ("height", f"{answer.height_km:.0f} km"),
+        ("date", answer.date),
+        ("gyrofrequency", f"{answer.gyrofrequency_mhz:.3f} MHz"),
+        ("dip (down positive)", f"{answer.dip_deg:.2f}°"),
+        ("declination (east)", f"{answer.declination_deg:.2f}°"),
+        ("total", f"{answer.flux_density_nt:.0f} nT"),
+        ("east", f"{answer.east_nt:.0f} nT"),
+        ("north", f"{answer.north_nt:.0f} nT"),
+        ("up", f"{answer.up_nt:.0f} nT"),
+        ("model", answer.model),
+    ]
+    return "".join(f"  {name:<22}{value}\n" for name, value in rows)
+
+
+def wave_text(answer: WaveAnswer) -> str:
+    """Both characteristic waves at a point of plasma.
+
+    Parameters
+    ----------
+    answer : WaveAnswer
+        The answer.
+
+    Returns
+    -------
+    str
+        The ratios and a small table.
+    """
+
+    def number(value: float | None) -> str:
+        return "infinite" if value is None else f"{value:.6f}"
+
+    def ratio(wave: OneWave) -> str:
+        return "over 60 dB" if wave.axial_ratio_db is None else f"{wave.axial_ratio_db:.2f} dB"
+
+    both = (answer.ordinary, answer.extraordinary)
+    lines = [
+        f"  X = {answer.X:.6f}   Y = {answer.Y:.6f}   Z = {answer.Z:.6f}   "
+        f"θ = {answer.theta_deg:.2f}°",
+        "",
+        _pair("", ["ordinary", "extraordinary"]),
+        _pair("μ", [number(w.mu) for w in both]),
+        _pair("χ", [number(w.chi) for w in both]),
+        _pair("ρ, real part", [number(w.rho_re) for w in both]),
+        _pair("ρ, imaginary part", [number(w.rho_im) for w in both]),
+        _pair("hand about the normal", [w.hand.value for w in both]),
+        _pair("axial ratio", [ratio(w) for w in both]),
+    ]
+    return "\n".join(lines) + "\n"

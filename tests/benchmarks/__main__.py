@@ -1,0 +1,14 @@
+"""Print the benchmark table: ``python -m tests.benchmarks [NAME ...]``."""
+
+import sys
+
+from tests.benchmarks import faces, rays, waves
+
+GROUPS = {"rays": rays.rows, "waves": waves.rows, "faces": faces.rows}
+
+if __name__ == "__main__":
+    wanted = sys.argv[1:] or list(GROUPS)
+    print(f"{'what':<58}{'measured':>14}{'wanted':>14}")
+    for name in wanted:
+        for what, measured, target in GROUPS[name]():
+            print(f"{what:<58}{measured:>14}{target:>14}", flush=True)

@@ -1,0 +1,30 @@
+"""Solar flux and sunspot number.
+
+Source
+------
+Recommendation ITU-R P.371-8, "Choice of indices for long-term ionospheric
+predictions", 1999: the two relations of twelve-month means.
+
+Kind: published. Printed precision: exact values of the quadratic to 3 decimals.
+The inverse is a separate rounded formula; it agrees to 0.05.
+"""
+
+import pytest
+
+from magion.ionosphere.climatology import flux_of_sunspots, sunspots_of_flux
+
+ROWS = [(0, 63.7), (50, 102.325), (100, 145.400), (150, 192.925)]
+
+
+@pytest.mark.parametrize(("sunspots", "flux"), ROWS)
+def test_flux_of_sunspots(sunspots, flux):
+    assert abs(flux_of_sunspots(sunspots) - flux) < 5e-4  # half the last printed digit
+
+
+@pytest.mark.parametrize(("sunspots", "flux"), ROWS)
+def test_sunspots_of_flux(sunspots, flux):
+    assert abs(sunspots_of_flux(flux) - sunspots) < 0.05
+
+
+def test_sunspots_do_not_fall_below_zero():
+    assert sunspots_of_flux(60.0) == 0.0
