@@ -33,6 +33,11 @@ _SEARCH_TOLERANCE = 1.0
 _GOOD_MISS = 40.0
 _ANTIPODES = math.radians(179.9)
 _JUMP = 12e3
+STEEPEST: Final = 4e6 * 180.0 / math.pi
+"""Rays whose landing place moves faster than 4000 km a degree of elevation are
+left out: they graze the peak of a layer, and their power is spread so thin that
+they lie more than 15 dB below an ordinary ray [m/rad]."""
+
 _MOST_TRIALS = 9
 _BESIDE = math.radians(0.5)
 
@@ -453,6 +458,8 @@ def _candidates(link: Link, found: list[Fan], distance: float) -> _Search:
         for i in crossing:
             a0, a1 = fan.zenith_angle[i], fan.zenith_angle[i + 1]
             slope = (gap[i + 1] - gap[i]) / (a1 - a0)
+            if abs(slope) > STEEPEST:
+                continue
             start = a0 - gap[i] / slope
             # Turning the azimuth swings the landing place about the transmitter.
             swing = (

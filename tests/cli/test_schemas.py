@@ -22,6 +22,7 @@ from click.testing import CliRunner
 from magion.answers import path as records
 from magion.answers.point import FieldAnswer, OneWave, WaveAnswer
 from magion.cli import main
+from magion.formats.profile import read_profile
 
 FORMATS = Path(__file__).parents[2] / "docs" / "formats.md"
 JUNE, JUNE_NIGHT = "2026-06-21T12:00Z", "2026-06-21T00:00Z"
@@ -310,6 +311,8 @@ def test_hands_for_sending_back(answer, case):
 
 def test_the_hand_at_launch_is_an_answer_of_its_own(answer):
     """Southward to the dip equator the O wave is launched and arrives with one hand."""
+    for wave in answer("path", "both waves")["waves"]:  # steep: as it would be sent back
+        assert wave["launch"]["hand"] == wave["transmit_hand"] != wave["receive_hand"]
     ordinary = answer("path", "several rays")["waves"][0]
     assert ordinary["launch"]["hand"] == ordinary["receive_hand"] == "RHCP"
     assert ordinary["transmit_hand"] == "LHCP"
@@ -393,6 +396,15 @@ def test_page_of_formats_has_every_key_with_its_unit(command):
     assert rows == wanted
 
 
+def test_example_of_a_profile_can_be_read(tmp_path):
+    section = FORMATS.read_text(encoding="utf-8").split("## Profile")[1].split("\n## ")[0]
+    file = tmp_path / "profile.csv"
+    file.write_text(section.split("```")[1].lstrip("\n"), encoding="utf-8")
+    density, height = read_profile(file).peak()
+    assert abs(height - 250e3) < 500.0
+    assert abs(density / 4e11 - 1.0) < 0.01
+
+
 def test_csv_of_a_path_has_one_row_a_ray_under_dotted_keys(answer):
     found = answer("path", "several rays")
     table = list(csv.DictReader(io.StringIO(answer("path", "several rays", form="csv"))))
@@ -403,8 +415,8 @@ def test_csv_of_a_path_has_one_row_a_ray_under_dotted_keys(answer):
         assert row["arrives"] == "true"
         assert float(row["arrival.elevation_deg"]) == ray["arrival"]["elevation_deg"]
         assert float(row["limiting.field_angle_deg"]) == ray["limiting"]["field_angle_deg"]
-        assert float(row["path.midpoint.latitude_deg"]) == (
-            found["path"]["midpoint"]["latitude_deg"]
+        assert (
+            float(row["path.midpoint.latitude_deg"]) == (found["path"]["midpoint"]["latitude_deg"])
         )
         assert row["advice.headline"] == found["advice"]["headline"]
         assert row["muf_mhz"] == ""

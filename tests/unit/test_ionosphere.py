@@ -254,6 +254,17 @@ def test_with_values():
     assert abs(peak_by_slope(profile, 460e3) / 460e3 - 1) < 1e-5
 
 
+@pytest.mark.xfail(
+    strict=True,
+    reason="the thickness grows to that of the top faster than the height: a second maximum",
+)
+def test_density_falls_above_a_peak_typed_low():
+    # 291 km of the climatology lowered to 168: the bottom shrinks to 10.8 km, the top stays 43.5.
+    one = layers(hmf2=291e3, f2_bottom=30e3, f2_top=43.5e3).with_values(hmf2=168e3)
+    n = layered_density(np.arange(169e3, 400e3, 500.0), one)
+    assert np.diff(n).max() < 0.0
+
+
 def test_f1_ledge_adds_below_the_peak_only():
     with_ledge, without = layers(f1_share=1.0), layers(f1_share=0.0)
     h = np.arange(60e3, 600e3, 500.0)

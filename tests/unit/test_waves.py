@@ -28,6 +28,10 @@ from magion.waves import (
     resonance,
 )
 
+extended = pytest.mark.skipif(
+    np.finfo(np.longdouble).eps > 1e-18, reason="central differences need the extended format"
+)
+
 
 def textbook(X, Y_T2, Y_L2, Z=0.0, *, extraordinary, number=np.longdouble):
     """n² by the form multiplied through by (U − X), with its cancellations."""
@@ -201,6 +205,7 @@ def random_states(number, seed):
     return X[tame], Y[tame], theta[tame], t[tame], s[tame]
 
 
+@extended
 @pytest.mark.parametrize("mode", MODES)
 def test_slopes_against_central_differences(mode):
     X, _, _, t, s = random_states(4000, 21)
@@ -239,6 +244,7 @@ def test_squares_of_the_ray_form_and_of_the_angle_form_agree():
         assert np.abs(square.imag).max() == 0.0
 
 
+@extended
 def test_group_index_against_the_derivative_of_f_mu():
     X, Y, theta, t, s = random_states(4000, 24)
     for mode, found in zip((False, True), group_index(X, Y, theta), strict=True):
@@ -281,7 +287,7 @@ def test_labels_are_continuous_across_X_1(share, theta_deg):
     Z = share * Y * np.sin(theta) ** 2 / (2 * abs(np.cos(theta)))
     frequency = 3e6
     nu_c = critical_collision_frequency(Y * frequency, theta)
-    assert (Z * 2 * np.pi * frequency > nu_c) is np.True_ or share < 1
+    assert bool(Z * 2 * np.pi * frequency > nu_c) is (share > 1)
     X = np.linspace(0.6, 1.4, 16_001)
     labelled = refractive_index_squared(X, Y, Z, theta)
     # Follow the two roots of the tensor from X < 1, where the labels are beyond doubt.
