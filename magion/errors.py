@@ -44,5 +44,5 @@ def require_range(name: str, value: float, low: float, high: float, unit: str = 
     """
     if not low <= value <= high:
         tail = f" {unit}" if unit else ""
-        raise InputError(f"{name} is {value:g}{tail}; accepted: {low:g} to {high:g}{tail}")
+        raise InputError(f"{name} is {value:.10g}{tail}; accepted: {low:g} to {high:g}{tail}")
     return value

@@ -27,6 +27,7 @@ LAST_DATE: Final = datetime(2030, 1, 1, tzinfo=UTC)
 LARGEST_RESIDUAL: Final = 5e-9
 """Largest difference a fit may leave to the field model [T]."""
 
+_CHECKED_SHARE = 0.7  # what the check points may show: between them it can be 1.34 times as much
 _POLE_MARGIN = 1e-7  # degrees; at 90 itself the synthesis divides by zero
 
 
@@ -344,11 +345,11 @@ def fit_field(
     half = np.array([angle / 2.0 + margin / EARTH_RADIUS, margin / EARTH_RADIUS])
     low = np.array([-half[0], -math.sin(half[1]), 0.0])
     high = np.array([half[0], math.sin(half[1]), top])
-    along_degree = max(4, math.ceil(3.0 + 4.5 * half[0]))
-    for extra in range(5):
-        degrees = (along_degree + 2 * extra, 4 + extra, 4 + extra // 2)
+    along_degree = max(4, math.ceil(3.0 + 9.0 * half[0]))
+    for extra in range(8):
+        degrees = (along_degree + 2 * extra, 4 + extra, 4 + (extra + 1) // 2)
         fit = _fit_box(axes, low, high, degrees, when)
-        if fit.residual <= LARGEST_RESIDUAL:
+        if fit.residual <= _CHECKED_SHARE * LARGEST_RESIDUAL:
             return fit
     raise MagionError(
         f"the field along the path could not be fitted to 5 nT (residual {fit.residual * 1e9:.1f})"

@@ -264,7 +264,7 @@ def ellipse(ratio: ArrayLike, tilt_angle: ArrayLike, right_hand: ArrayLike) -> C
         (E_x, E_y) of unit length [1].
     """
     r, angle, right = np.broadcast_arrays(ratio, tilt_angle, right_hand)
-    major = r / np.sqrt(1.0 + r * r)
+    major = 1.0 / np.sqrt(1.0 + 1.0 / (r * r))
     minor = np.where(right, -1j, 1j) / np.sqrt(1.0 + r * r)
     c, s = np.cos(angle), np.sin(angle)
     return np.stack([major * c - minor * s, major * s + minor * c])

@@ -59,6 +59,9 @@ MODES = (Mode.ORDINARY, Mode.EXTRAORDINARY)
 
 _BLOCK = 8192
 
+# Kernels pass NaN through and return infinity at a resonance, without warnings.
+_quiet = np.errstate(divide="ignore", invalid="ignore", over="ignore")
+
 
 def plasma_ratio(electron_density: ArrayLike, frequency: ArrayLike) -> FloatArray:
     """X = (f_N / f)**2.
@@ -161,8 +164,7 @@ def _split(
 def _shape(Y_L: FloatArray, distance: ComplexArray, q: ComplexArray) -> ComplexArray:
     """H = Y_L (U - X) / q: rho is i h of the ordinary, 1 / (i h) of the extraordinary wave."""
     h = distance * Y_L
-    with np.errstate(divide="ignore", invalid="ignore"):
-        h /= q
+    h /= q
     empty = q == 0.0
     if empty.any():
         # θ = 0 and X = 1, Z = 0 together, or no field at all: the limit from X < 1.
@@ -178,17 +180,19 @@ def _squares(
     h = _shape(Y_L, distance, q)
     U = 1.0 - 1j * Z
     ordinary = 1.0 - X / (U + Y_L * h)
-    with np.errstate(divide="ignore", invalid="ignore"):
-        extraordinary = 1.0 - X * distance / (U * distance - q)
-        singular = (q == 0.0) & (distance == 0.0)
-        if singular.any():
-            extraordinary = np.where(singular, 1.0 - X / (U - np.abs(Y_L)), extraordinary)
+    extraordinary = 1.0 - X * distance / (U * distance - q)
+    singular = (q == 0.0) & (distance == 0.0)
+    if singular.any():
+        extraordinary = np.where(singular, 1.0 - X / (U - np.abs(Y_L)), extraordinary)
     return ordinary, extraordinary, h
 
 
 def _lossy_root(square: ComplexArray) -> ComplexArray:
-    """Root of n² in the quadrant mu >= 0, chi >= 0."""
+    """Root of n² in the quadrant mu >= 0, chi >= 0; infinite where n² is."""
     root = np.asarray(np.sqrt(square))
+    endless = np.isinf(square.real) | np.isinf(square.imag)
+    if endless.any():
+        root = np.where(endless, complex(np.inf, 0.0), root)
     root.imag = -np.abs(root.imag)
     return root
 
@@ -203,6 +207,7 @@ def _vectors(h: ComplexArray) -> tuple[ComplexArray, ComplexArray]:
     return ordinary, ordinary[::-1]
 
 
+@_quiet
 def refractive_index_squared(
     X: ArrayLike, Y: ArrayLike, Z: ArrayLike, theta: ArrayLike
 ) -> tuple[ComplexArray, ComplexArray]:
@@ -235,6 +240,7 @@ def refractive_index_squared(
     return ordinary, extraordinary
 
 
+@_quiet
 def refractive_index(
     X: ArrayLike, Y: ArrayLike, Z: ArrayLike, theta: ArrayLike
 ) -> tuple[ComplexArray, ComplexArray]:
@@ -271,6 +277,7 @@ class CharacteristicWaves:
     field: tuple[ComplexArray, ComplexArray]
 
 
+@_quiet
 def characteristic_waves(
     X: ArrayLike, Y: ArrayLike, Z: ArrayLike, theta: ArrayLike
 ) -> CharacteristicWaves:
@@ -303,6 +310,7 @@ def characteristic_waves(
     )
 
 
+@_quiet
 def polarization_vectors(
     X: ArrayLike, Y: ArrayLike, Z: ArrayLike, theta: ArrayLike
 ) -> tuple[ComplexArray, ComplexArray]:
@@ -326,6 +334,7 @@ def polarization_vectors(
     return _vectors(_shape(Y_L, *_split(X, Z, Y_L, Y * np.sin(theta))))
 
 
+@_quiet
 def polarization_ratio(
     X: ArrayLike, Y: ArrayLike, Z: ArrayLike, theta: ArrayLike
 ) -> tuple[ComplexArray, ComplexArray]:
@@ -343,12 +352,12 @@ def polarization_ratio(
         has no E_x (the extraordinary at theta = 90 degrees).
     """
     ordinary, extraordinary = polarization_vectors(X, Y, Z, theta)
-    with np.errstate(divide="ignore", invalid="ignore"):
-        rho_x = extraordinary[1] / extraordinary[0]
+    rho_x = extraordinary[1] / extraordinary[0]
     rho_x = np.where(extraordinary[0] == 0.0, complex(np.inf, 0.0), rho_x)
     return ordinary[1] / ordinary[0], rho_x
 
 
+@_quiet
 def index_difference(X: ArrayLike, Y: ArrayLike, Z: ArrayLike, theta: ArrayLike) -> FloatArray:
     """Difference of the real indices, mu_O - mu_X, without cancellation at small X.
 
@@ -368,13 +377,14 @@ def index_difference(X: ArrayLike, Y: ArrayLike, Z: ArrayLike, theta: ArrayLike)
     U = 1.0 - 1j * Z
     g = Y_L * _shape(Y_L, distance, q)
     n_o, n_x = refractive_index(X, Y, Z, theta)
-    with np.errstate(divide="ignore", invalid="ignore"):
-        # n_O² − n_X² = X [ (U−X)/(U(U−X) − q) − 1/(U + g) ] = X [U−X](g + q/(U−X)) / ...
-        split = X * (distance * g + q) / ((U * distance - q) * (U + g))
-        difference = np.asarray((split / (n_o + n_x)).real)
-    return np.where((n_o + n_x) == 0.0, 0.0, difference)
+    # n_O² − n_X² = X [ (U−X)/(U(U−X) − q) − 1/(U + g) ] = X [U−X](g + q/(U−X)) / ...
+    split = X * (distance * g + q) / ((U * distance - q) * (U + g))
+    difference = np.asarray((split / (n_o + n_x)).real)
+    # Where the split form is 0/0 (X = 1 along the field) or both indices vanish.
+    return np.where(np.isfinite(difference), difference, np.asarray((n_o - n_x).real))
 
 
+@_quiet
 def group_index(X: ArrayLike, Y: ArrayLike, theta: ArrayLike) -> tuple[FloatArray, FloatArray]:
     """Group refractive index of both waves without collisions.
 
@@ -395,11 +405,11 @@ def group_index(X: ArrayLike, Y: ArrayLike, theta: ArrayLike) -> tuple[FloatArra
     for mode in MODES:
         extraordinary = np.full(X.shape, mode is Mode.EXTRAORDINARY)
         square, by_x, by_t, by_s = index_squared_and_slopes(X, t, s, extraordinary)
-        with np.errstate(invalid="ignore", divide="ignore"):
-            found.append((square - X * by_x - t * by_t - s * by_s) / np.sqrt(square))
+        found.append((square - X * by_x - t * by_t - s * by_s) / np.sqrt(square))
     return found[0], found[1]
 
 
+@_quiet
 def index_squared_and_slopes(
     X: FloatArray, t: FloatArray, s: FloatArray, extraordinary: BoolArray
 ) -> tuple[FloatArray, FloatArray, FloatArray, FloatArray]:
@@ -424,8 +434,7 @@ def index_squared_and_slopes(
     by_x, by_t, by_s : ndarray
         Derivatives of n² by X, by Y_T² at fixed Y_L², and by Y_L² at fixed Y_T² [1].
     """
-    with np.errstate(divide="ignore", invalid="ignore"):
-        return fast_slopes(X, t, s, extraordinary)
+    return fast_slopes(X, t, s, extraordinary)
 
 
 def fast_slopes(
@@ -446,7 +455,7 @@ def fast_slopes(
     a = 1.0 - X
     half = 0.5 * t
     sa = s * a
-    root = np.maximum(np.sqrt(half * half + sa * a), 1e-300)
+    root = np.maximum(np.sqrt(half * half + sa * a), 1e-60)
     q = root + half
     over_root = 0.5 / root
     q_x = -2.0 * sa * over_root
@@ -464,6 +473,7 @@ def fast_slopes(
     return 1.0 - X * ratio, by_x, by_t, by_s
 
 
+@_quiet
 def resonance(Y: ArrayLike, theta: ArrayLike) -> FloatArray:
     """X at which a collisionless index is infinite.
 
@@ -481,8 +491,7 @@ def resonance(Y: ArrayLike, theta: ArrayLike) -> FloatArray:
         Y < 1, on the ordinary for Y > 1 (where it is positive) [1].
     """
     Y, theta = as_floats(Y, theta)
-    with np.errstate(divide="ignore", invalid="ignore"):
-        return (1.0 - Y * Y) / (1.0 - (Y * np.cos(theta)) ** 2)
+    return (1.0 - Y * Y) / (1.0 - (Y * np.cos(theta)) ** 2)
 
 
 def extraordinary_critical_frequency(

@@ -96,6 +96,7 @@ class LayerParameters:
                 out,
                 hmf2=hmf2,
                 f2_bottom=self.f2_bottom * stretch,
+                f2_top=self.f2_top * stretch,
                 hmf1=self.hme + (self.hmf1 - self.hme) * (hmf2 - self.hme) / (self.hmf2 - self.hme),
             )
         return out
@@ -241,7 +242,9 @@ def layered_density(height: FloatArray, layers: LayerParameters) -> FloatArray:
 
     def f2_layer(h: FloatArray) -> FloatArray:
         above = smooth_step((h - layers.hmf2) / 100e3)
-        thickness = layers.f2_bottom + (layers.f2_top - layers.f2_bottom) * above
+        # More than 1.6 times the lower thickness would make a second maximum.
+        top = min(max(layers.f2_top, layers.f2_bottom), 1.6 * layers.f2_bottom)
+        thickness = layers.f2_bottom + (top - layers.f2_bottom) * above
         return epstein(h, layers.hmf2, thickness)
 
     def e_layer(h: FloatArray) -> FloatArray:

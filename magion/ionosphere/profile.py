@@ -25,6 +25,8 @@ from magion.ionosphere.layers import (
 SPACING: Final = 250.0
 """Distance of the spline's nodes [m]."""
 
+_LEAST_E = 1.24e8  # density of 0.1 MHz, the least foE there is [m⁻³]
+
 _TO_POLYNOMIAL = (
     np.array(
         [[1.0, 4.0, 1.0, 0.0], [-3.0, 0.0, 3.0, 0.0], [3.0, -6.0, 3.0, 0.0], [-1.0, 3.0, -3.0, 1.0]]
@@ -75,8 +77,9 @@ class VerticalProfiles:
         rows = self.polynomials.reshape(-1, 4).take(cell + which * cells, axis=0)
         c0, c1, c2, c3 = rows.T
         cubic = c3 * t
-        density = ((cubic + c2) * t + c1) * t + c0
-        slope = ((3.0 * cubic + 2.0 * c2) * t + c1) * (1.0 / SPACING)
+        inside = (x > 0.0) & (x < cells)
+        density = (((cubic + c2) * t + c1) * t + c0) * inside
+        slope = ((3.0 * cubic + 2.0 * c2) * t + c1) * (inside / SPACING)
         return density, slope
 
     def density(self, position: FloatArray, which: IntArray) -> tuple[FloatArray, FloatArray]:
@@ -115,10 +118,7 @@ class VerticalProfiles:
         height : float
             Height of the peak [m].
         """
-        return self._peak_within(self.base, self.top, which)
-
-    def _peak_within(self, low: float, high: float, which: int) -> tuple[float, float]:
-        h = np.arange(low, high, 10.0)
+        h = np.arange(self.base, self.top, 10.0)
         density, _ = self.at_height(h, which)
         best = int(np.argmax(density))
         return float(density[best]), float(h[best])
@@ -140,8 +140,14 @@ class VerticalProfiles:
         low, high = max(self.base, 90e3), min(self.top, 150e3)
         if high <= low:
             return None
-        density, height = self._peak_within(low, high, which)
-        return (density, height) if low + 20.0 < height < high - 20.0 else None
+        h = np.arange(low, high, 10.0)
+        density, slope = self.at_height(h, which)
+        rises = (slope[:-1] > 0.0) & (slope[1:] <= 0.0)
+        summits = np.flatnonzero(rises & (density[:-1] > _LEAST_E))
+        if summits.size == 0:
+            return None
+        best = int(summits[np.argmax(density[summits])])
+        return float(density[best]), float(h[best])
 
 
 def _splined(samples: FloatArray) -> FloatArray:
@@ -164,7 +170,7 @@ def tabulated(
     functions : sequence of callable
         Each takes heights [m] and returns electron densities [m⁻³].
     base, top : float
-        Range of heights; beyond it the density is taken as zero [m].
+        Range of heights; the profile is zero beyond it [m].
     interpolate : bool
         True to meet the function to fourth order of the spacing; False for the
         variation-diminishing spline, which never overshoots.
@@ -176,7 +182,7 @@ def tabulated(
     """
     cells = max(int(np.ceil((top - base) / SPACING)), 4)
     h: FloatArray = base + SPACING * np.arange(-2.0, cells + 3)
-    samples = np.stack([np.where((h < base) | (h > top), 0.0, f(h)) for f in functions])
+    samples = np.stack([f(h) for f in functions])
     coefficients = samples[:, 1:-1]
     if interpolate:
         bend = samples[:, 2:] - 2.0 * samples[:, 1:-1] + samples[:, :-2]
@@ -226,11 +232,19 @@ def measured_profile(height: FloatArray, electron_density: FloatArray) -> Vertic
 
     first = max(int(np.argmax(electron_density > 0.0)) - 1, 0)  # rays run straight below plasma
     height, electron_density = height[first:], electron_density[first:]
-    curve = PchipInterpolator(height, electron_density, extrapolate=True)
+    low, high = float(height[0]), float(height[-1])
+    curve = PchipInterpolator(height, electron_density)
+
+    def rows(h: FloatArray) -> FloatArray:
+        between = np.maximum(curve(np.clip(h, low, high)), 0.0)
+        return np.where((h < low) | (h > high), 0.0, between)
+
+    # Rays need an edge without a step: a row that is not zero falls to zero over two cells.
+    edge = 2.0 * SPACING
     return tabulated(
-        [lambda h: np.maximum(curve(h), 0.0)],
-        float(height[0]),
-        float(height[-1]),
+        [rows],
+        low - (edge if electron_density[0] > 0.0 else 0.0),
+        high + (edge if electron_density[-1] > 0.0 else 0.0),
         interpolate=False,
     )
 

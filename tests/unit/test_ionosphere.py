@@ -191,16 +191,12 @@ def test_below_the_base_and_at_a_night_valley():
     assert 0 <= valley.min() < density_of_frequency(0.4e6) / 2
 
 
-@pytest.mark.xfail(
-    strict=True, reason="the spline rings in the last two cells, where the layers are cut at 600 km"
-)
 @pytest.mark.parametrize("hmf2", [590e3, 600e3])
 def test_a_peak_close_to_the_top_keeps_its_critical_frequency(hmf2):
     one = layers(fof2=20e6, hmf2=hmf2, f2_bottom=60e3)
     assert abs(critical_frequency(profiles_of_layers([one])) / 20e6 - 1) < 1e-5
 
 
-@pytest.mark.xfail(strict=True, reason="the value at the edge is held instead of zero")
 def test_density_above_the_top_is_zero():
     density, slope = profiles_of_layers([CASES["thick"]]).at_height(np.array([601e3, 900e3]))
     assert np.all(density == 0.0)
@@ -224,9 +220,6 @@ def test_no_peak_of_the_e_region_where_the_density_only_rises():
     assert profiles_of_layers([one]).e_peak() is None
 
 
-@pytest.mark.xfail(
-    strict=True, reason="the density at 150 km exceeds that of the E peak, which is then not seen"
-)
 def test_peak_of_the_e_region_under_a_dense_f_region():
     one = layers(fof2=10e6, hmf2=250e3, f2_bottom=40e3, foe=3.5e6)
     n = layered_density(np.array([105e3, 110e3, 118e3]), one)
@@ -254,10 +247,6 @@ def test_with_values():
     assert abs(peak_by_slope(profile, 460e3) / 460e3 - 1) < 1e-5
 
 
-@pytest.mark.xfail(
-    strict=True,
-    reason="the thickness grows to that of the top faster than the height: a second maximum",
-)
 def test_density_falls_above_a_peak_typed_low():
     # 291 km of the climatology lowered to 168: the bottom shrinks to 10.8 km, the top stays 43.5.
     one = layers(hmf2=291e3, f2_bottom=30e3, f2_top=43.5e3).with_values(hmf2=168e3)
@@ -355,7 +344,6 @@ def test_measured_profile_that_ends_at_zero_leaves_no_step():
     assert np.array_equal(found, profile.at_height(outside)[0])
 
 
-@pytest.mark.xfail(strict=True, reason="the value at the edge is held instead of zero")
 def test_measured_profile_is_zero_outside():
     profile = measured_profile(np.array([1e5, 1.5e5, 2e5]), np.array([1e10, 1e11, 5e11]))
     assert np.all(profile.at_height(np.array([50e3, 99e3, 201e3, 300e3]))[0] == 0.0)

@@ -134,7 +134,6 @@ def test_ellipse_of_a_nearly_straight_wave():
     assert abs(np.degrees(tilt(vector)) - 30) < 1e-9
 
 
-@pytest.mark.xfail(strict=True, reason="inf / inf: an axial ratio that axial_ratio itself returns")
 def test_ellipse_of_a_straight_wave():
     vector = ellipse(np.inf, np.radians(30), True)
     assert np.abs(np.abs(vector) - [np.cos(np.radians(30)), 0.5]).max() < 1e-15
