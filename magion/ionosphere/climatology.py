@@ -14,7 +14,7 @@ import numpy as np
 from magion.arrays import FloatArray
 from magion.errors import require_range
 from magion.geometry import as_utc
-from magion.ionosphere.layers import LayerParameters, smooth_step
+from magion.ionosphere.layers import LayerParameters, d_region_of_sun, smooth_step
 
 MODEL: Final = "international climatology (CCIR maps)"
 ASSUMED_FLUX: Final = 120.0
@@ -74,6 +74,8 @@ class Climate:
         Propagation factor M(3000)F2 [1].
     f1_share : ndarray, shape (hours, places)
         0 where there is no F1 ledge, 1 where there is [1].
+    zenith : ndarray, shape (hours, places)
+        Solar zenith angle [rad].
     source : str
         Name of the model with its driver.
     """
@@ -87,7 +89,39 @@ class Climate:
     f2_top: FloatArray
     m3000: FloatArray
     f1_share: FloatArray
+    zenith: FloatArray
     source: str
+
+    def places(self, hour: int) -> LayerParameters:
+        """Layer parameters of all places at one hour.
+
+        Parameters
+        ----------
+        hour : int
+            Index of the hour [1].
+
+        Returns
+        -------
+        LayerParameters
+            The layers, arrays over the places.
+        """
+        d_height, d_gradient = d_region_of_sun(self.zenith[hour])
+        return LayerParameters(
+            fof2=self.fof2[hour],
+            hmf2=self.hmf2[hour],
+            f2_bottom=self.f2_bottom[hour],
+            f2_top=self.f2_top[hour],
+            foe=self.foe[hour],
+            hme=110e3,
+            e_bottom=5e3,
+            e_top=7e3,
+            fof1=self.fof1[hour],
+            hmf1=self.hmf1[hour],
+            f1_share=self.f1_share[hour],
+            source=self.source,
+            d_height=d_height,
+            d_gradient=d_gradient,
+        )
 
     def layers(self, hour: int, place: int) -> LayerParameters:
         """Layer parameters of one hour and place.
@@ -95,28 +129,14 @@ class Climate:
         Parameters
         ----------
         hour, place : int
-            Indices into the arrays.
+            Indices into the arrays [1].
 
         Returns
         -------
         LayerParameters
             The layers.
         """
-        at = hour, place
-        return LayerParameters(
-            fof2=float(self.fof2[at]),
-            hmf2=float(self.hmf2[at]),
-            f2_bottom=float(self.f2_bottom[at]),
-            f2_top=float(self.f2_top[at]),
-            foe=float(self.foe[at]),
-            hme=110e3,
-            e_bottom=5e3,
-            e_top=7e3,
-            fof1=float(self.fof1[at]),
-            hmf1=float(self.hmf1[at]),
-            f1_share=float(self.f1_share[at]),
-            source=self.source,
-        )
+        return self.places(hour).at(place)
 
 
 def f1_critical_frequency(
@@ -211,5 +231,6 @@ def climate(
         f2_top=np.asarray(f2["B_top"]) * 1e3,
         m3000=np.asarray(f2["M3000"]),
         f1_share=smooth_step((np.asarray(f1["P"]) - _MIDDLE_F1) / 0.2 + 0.5),
+        zenith=np.radians(zenith_deg),
         source=f"{MODEL}, solar flux {flux:g}",
     )

@@ -2,23 +2,27 @@
 
 The profile is our own: each layer an Epstein function of its published
 thickness, joined so that the critical frequencies and peak heights asked for
-are met exactly and everything is smooth to the second derivative.
+are met exactly and everything is smooth to the third derivative.
 
-    N(h) = fade(h) N_F2(h) + fade(h) N_F1(h) + N_E(h)
+    N(h) = fade(h) [N_F2(h) + N_F1(h)] + N_E(h) + N_Es(h)     above 95 km
+    N(h) = N_D(h)                                             below 80 km
 
 `fade` is 0 at the E peak and 1 some 40 km above, so that no tail of F moves
-foE; the E and F1 layers end below the F2 peak, so that none moves foF2. Below
-the E peak the Epstein function of 5 km thickness runs on as the D region.
+foE; the E and F1 layers end below the F2 peak, so that none moves foF2.
+Between 80 and 95 km the logarithms of both are blended. The D region is the
+exponential one of [WaitSpies1964]_.
 """
 
-from dataclasses import dataclass, replace
-from typing import Final
+from dataclasses import dataclass, fields, replace
+from typing import Final, TypeAlias
 
 import numpy as np
 from numpy.typing import ArrayLike
 
 from magion.arrays import FloatArray
 from magion.constants import PLASMA_FREQUENCY_SQUARED_PER_DENSITY
+
+FloatOrArray: TypeAlias = float | FloatArray
 
 BASE: Final = 60e3
 """Lowest height of the profiles built here [m]."""
@@ -29,77 +33,126 @@ TOP: Final = 600e3
 _FADE = 40e3
 _E_TOP_END = 90e3
 _ONSET = 10e3
+_D_TOP, _E_BOTTOM = 80e3, 95e3
+
+SPORADIC_HEIGHT: Final = 105e3
+"""Height of a sporadic E layer [m]."""
+
+_SPORADIC_THICKNESS = 700.0
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class LayerParameters:
-    """Parameters of the E, F1 and F2 layers over one place.
+    """Parameters of the D, E, F1 and F2 regions over one place or several.
 
     Parameters
     ----------
-    fof2, hmf2 : float
+    fof2, hmf2 : float or ndarray, shape (places,)
         Critical frequency [Hz] and peak height [m] of F2.
-    f2_bottom, f2_top : float
+    f2_bottom, f2_top : float or ndarray
         Epstein thickness of F2 below and above its peak [m].
-    foe, hme : float
+    foe, hme : float or ndarray
         Critical frequency [Hz] and peak height [m] of E.
-    e_bottom, e_top : float
+    e_bottom, e_top : float or ndarray
         Epstein thickness of E below and above its peak [m].
-    fof1, hmf1 : float
+    fof1, hmf1 : float or ndarray
         Critical frequency [Hz] and height [m] of the F1 ledge.
-    f1_share : float
+    f1_share : float or ndarray
         0 where there is no F1, 1 where there is, between at its coming and
         going [1].
     source : str
         Where the parameters come from.
+    d_height, d_gradient : float or ndarray
+        Reference height h' [m] and steepness beta [1/m] of the D region.
+    foes : float
+        Critical frequency of sporadic E; 0 where there is none [Hz].
     """
 
-    fof2: float
-    hmf2: float
-    f2_bottom: float
-    f2_top: float
-    foe: float
-    hme: float
-    e_bottom: float
-    e_top: float
-    fof1: float
-    hmf1: float
-    f1_share: float
+    fof2: FloatOrArray
+    hmf2: FloatOrArray
+    f2_bottom: FloatOrArray
+    f2_top: FloatOrArray
+    foe: FloatOrArray
+    hme: FloatOrArray
+    e_bottom: FloatOrArray
+    e_top: FloatOrArray
+    fof1: FloatOrArray
+    hmf1: FloatOrArray
+    f1_share: FloatOrArray
     source: str
+    d_height: FloatOrArray = 72.3e3
+    d_gradient: FloatOrArray = 0.34e-3
+    foes: float = 0.0
 
-    def with_values(
-        self, *, fof2: float | None = None, hmf2: float | None = None, foe: float | None = None
-    ) -> "LayerParameters":
-        """The same layers with typed values in place of the climatology's.
+    def at(self, place: int) -> "LayerParameters":
+        """The parameters of one of several places.
 
         Parameters
         ----------
-        fof2, foe : float, optional
-            Critical frequencies [Hz].
-        hmf2 : float, optional
-            Peak height of F2 [m]; the thickness below it scales with its
-            height above 100 km, and the F1 ledge keeps its relative place.
+        place : int
+            Index of the place [1].
+
+        Returns
+        -------
+        LayerParameters
+            With plain numbers.
+        """
+        values = {}
+        for field in fields(self):
+            value = getattr(self, field.name)
+            values[field.name] = float(value[place]) if isinstance(value, np.ndarray) else value
+        return LayerParameters(**values)
+
+    def scaled(
+        self, *, fof2: float = 1.0, hmf2: float = 1.0, foe: float = 1.0
+    ) -> "LayerParameters":
+        """The same layers with ratios to the climatology, at every place alike.
+
+        Parameters
+        ----------
+        fof2, hmf2, foe : float
+            Factors of the critical frequencies and of the height of F2 above
+            100 km; its thickness scales with that height, and the F1 ledge
+            keeps its relative place [1].
 
         Returns
         -------
         LayerParameters
             The changed layers.
         """
-        out = self
-        if fof2 is not None:
-            out = replace(out, fof2=fof2)
-        if foe is not None:
-            out = replace(out, foe=foe)
-        if hmf2 is not None:
-            stretch = (hmf2 - 100e3) / (self.hmf2 - 100e3)
-            out = replace(
-                out,
-                hmf2=hmf2,
-                f2_bottom=self.f2_bottom * stretch,
-                f2_top=self.f2_top * stretch,
-                hmf1=self.hme + (self.hmf1 - self.hme) * (hmf2 - self.hme) / (self.hmf2 - self.hme),
-            )
-        return out
+        peak = 100e3 + (self.hmf2 - 100e3) * hmf2
+        return replace(
+            self,
+            fof2=self.fof2 * fof2,
+            foe=self.foe * foe,
+            hmf2=peak,
+            f2_bottom=self.f2_bottom * hmf2,
+            f2_top=self.f2_top * hmf2,
+            hmf1=self.hme + (self.hmf1 - self.hme) * (peak - self.hme) / (self.hmf2 - self.hme),
+        )
+
+    def with_values(
+        self, *, fof2: float | None = None, hmf2: float | None = None, foe: float | None = None
+    ) -> "LayerParameters":
+        """The layers of one place with measured values in place of the climatology's.
+
+        Parameters
+        ----------
+        fof2, foe : float, optional
+            Critical frequencies [Hz].
+        hmf2 : float, optional
+            Peak height of F2 [m].
+
+        Returns
+        -------
+        LayerParameters
+            The changed layers, by :meth:`scaled`.
+        """
+        return self.scaled(
+            fof2=1.0 if fof2 is None else fof2 / float(self.fof2),
+            hmf2=1.0 if hmf2 is None else (hmf2 - 100e3) / (float(self.hmf2) - 100e3),
+            foe=1.0 if foe is None else foe / float(self.foe),
+        )
 
 
 def density_of_frequency(plasma_frequency: ArrayLike) -> FloatArray:
@@ -135,14 +188,14 @@ def frequency_of_density(electron_density: ArrayLike) -> FloatArray:
     return np.sqrt(PLASMA_FREQUENCY_SQUARED_PER_DENSITY * np.asarray(electron_density))
 
 
-def epstein(height: FloatArray, peak: float, thickness: ArrayLike) -> FloatArray:
+def epstein(height: FloatArray, peak: ArrayLike, thickness: ArrayLike) -> FloatArray:
     """Epstein layer of unit peak, 4 e^z / (1 + e^z)² = sech²(z / 2).
 
     Parameters
     ----------
     height : ndarray
         Heights [m].
-    peak : float
+    peak : array_like
         Height of the peak [m].
     thickness : array_like
         Thickness parameter B; z = (h - peak) / B [m].
@@ -156,7 +209,9 @@ def epstein(height: FloatArray, peak: float, thickness: ArrayLike) -> FloatArray
     return np.asarray(1.0 / np.cosh(0.5 * z) ** 2)
 
 
-def skew_epstein(height: FloatArray, peak: float, bottom: float, top: float) -> FloatArray:
+def skew_epstein(
+    height: FloatArray, peak: ArrayLike, bottom: ArrayLike, top: ArrayLike
+) -> FloatArray:
     """Epstein layer of unit peak with one thickness below and another above.
 
     The hyperbolic functions of the Epstein layer are taken with their own
@@ -167,9 +222,9 @@ def skew_epstein(height: FloatArray, peak: float, bottom: float, top: float) -> 
     ----------
     height : ndarray
         Heights [m].
-    peak : float
+    peak : array_like
         Height of the peak [m].
-    bottom, top : float
+    bottom, top : array_like
         Thickness far below and far above the peak [m].
 
     Returns
@@ -177,7 +232,8 @@ def skew_epstein(height: FloatArray, peak: float, bottom: float, top: float) -> 
     ndarray
         The layer, 0 to 1 [1].
     """
-    u = height - peak
+    u = height - np.asarray(peak)
+    bottom, top = np.asarray(bottom), np.asarray(top)
     below = np.exp(np.minimum(-u / bottom, 600.0))
     above = np.exp(np.minimum(u / top, 600.0))
     return np.asarray(2.0 / (1.0 + (bottom * below + top * above) / (bottom + top)))
@@ -223,47 +279,101 @@ def smooth_step(x: FloatArray) -> FloatArray:
     return x**4 * (35.0 + x * (-84.0 + x * (70.0 - 20.0 * x)))
 
 
-def layered_density(height: FloatArray, layers: LayerParameters) -> FloatArray:
-    """Electron density of the layers at heights.
+def d_region(height: FloatArray, reference: ArrayLike, gradient: ArrayLike) -> FloatArray:
+    """Exponential D region [WaitSpies1964]_.
 
     Parameters
     ----------
     height : ndarray
         Heights [m].
-    layers : LayerParameters
-        The layers.
+    reference : array_like
+        Reference height h' [m].
+    gradient : array_like
+        Steepness beta [1/m].
 
     Returns
     -------
     ndarray
+        1.43e13 exp(-0.15 h') exp((beta - 0.15)(h - h')), h in km [m⁻³].
+    """
+    h, top = height * 1e-3, np.asarray(reference) * 1e-3
+    beta = np.asarray(gradient) * 1e3
+    return np.asarray(1.43e13 * np.exp(-0.15 * top + (beta - 0.15) * (h - top)))
+
+
+def d_region_of_sun(zenith: ArrayLike) -> tuple[FloatArray, FloatArray]:
+    """Reference height and steepness of the D region under the sun.
+
+    Day values within the published range (70-74 km, 0.3-0.45 per km), a little
+    lower under a high sun; night values 86 km and 0.55 per km; a smooth change
+    between zenith angles of 80 and 98 degrees (our own choice).
+
+    Parameters
+    ----------
+    zenith : array_like
+        Solar zenith angle [rad].
+
+    Returns
+    -------
+    reference : ndarray
+        h' [m].
+    gradient : ndarray
+        beta [1/m].
+    """
+    angle = np.asarray(zenith, dtype=np.float64)
+    day_height = 75.0e3 - 3.4e3 * np.sqrt(np.maximum(np.cos(angle), 0.0))
+    night = smooth_step((np.degrees(angle) - 80.0) / 18.0)
+    return day_height + (86.0e3 - day_height) * night, 0.34e-3 + (0.55e-3 - 0.34e-3) * night
+
+
+def layered_density(height: FloatArray, layers: LayerParameters) -> FloatArray:
+    """Electron density of the layers at heights.
+
+    Parameters
+    ----------
+    height : ndarray, shape (k,)
+        Heights [m].
+    layers : LayerParameters
+        The layers, of one place or of several.
+
+    Returns
+    -------
+    ndarray, shape (k,) or (places, k)
         Electron density [m⁻³]; 0 below 60 km.
     """
-    fade = smooth_step((height - layers.hme) / _FADE)
+
+    def wide(value: FloatOrArray) -> FloatArray:
+        return np.asarray(value, dtype=np.float64)[..., None]
+
+    hme, hmf2, hmf1 = wide(layers.hme), wide(layers.hmf2), wide(layers.hmf1)
+    bottom = wide(layers.f2_bottom)
+    # A topside much thicker than the bottomside would make a second maximum.
+    top = np.clip(wide(layers.f2_top), bottom, 1.6 * bottom)
+    nm_f2 = density_of_frequency(wide(layers.fof2))
+    nm_e = density_of_frequency(wide(layers.foe))
+    e_end = np.minimum(hme + _E_TOP_END, hmf2)
 
     def f2_layer(h: FloatArray) -> FloatArray:
-        above = smooth_step((h - layers.hmf2) / 100e3)
-        # More than 1.6 times the lower thickness would make a second maximum.
-        top = min(max(layers.f2_top, layers.f2_bottom), 1.6 * layers.f2_bottom)
-        thickness = layers.f2_bottom + (top - layers.f2_bottom) * above
-        return epstein(h, layers.hmf2, thickness)
+        thickness = bottom + (top - bottom) * smooth_step((h - hmf2) / 100e3)
+        return nm_f2 * epstein(h, hmf2, thickness)
 
     def e_layer(h: FloatArray) -> FloatArray:
-        end = min(layers.hme + _E_TOP_END, layers.hmf2)
-        shape = skew_epstein(h, layers.hme, layers.e_bottom, layers.e_top)
-        return shape * (1.0 - smooth_step((h - layers.hme - 10e3) / (end - layers.hme - 10e3)))
+        shape = skew_epstein(h, hme, wide(layers.e_bottom), wide(layers.e_top))
+        return nm_e * shape * (1.0 - smooth_step((h - hme - 10e3) / (e_end - hme - 10e3)))
 
-    nm_f2 = float(density_of_frequency(layers.fof2))
-    nm_e = float(density_of_frequency(layers.foe))
-    total = nm_f2 * fade * f2_layer(height) + nm_e * e_layer(height)
-    if layers.f1_share > 0.0:
-        at_ledge = np.asarray([layers.hmf1])
-        rest = nm_f2 * f2_layer(at_ledge)[0] + nm_e * e_layer(at_ledge)[0]
-        missing = float(density_of_frequency(min(layers.fof1, 0.9 * layers.fof2))) - rest
-        if missing > 0.0:
-            thickness = 0.25 * (layers.hmf1 - layers.hme) + 5e3
-            ledge = epstein(height, layers.hmf1, thickness)
-            ledge = ledge * (
-                1.0 - smooth_step((height - layers.hmf1) / (layers.hmf2 - layers.hmf1))
-            )
-            total = total + layers.f1_share * missing * fade * ledge
+    missing = density_of_frequency(np.minimum(wide(layers.fof1), 0.9 * wide(layers.fof2)))
+    missing = np.maximum(missing - f2_layer(hmf1) - e_layer(hmf1), 0.0) * wide(layers.f1_share)
+    ledge = epstein(height, hmf1, 0.25 * (hmf1 - hme) + 5e3)
+    ledge = missing * ledge * (1.0 - smooth_step((height - hmf1) / (hmf2 - hmf1)))
+    e_region = e_layer(height)
+    if layers.foes > 0.0:
+        at_height = e_layer(np.full(1, SPORADIC_HEIGHT))
+        extra = np.maximum(density_of_frequency(layers.foes) - at_height, 0.0)
+        e_region = e_region + extra * epstein(height, SPORADIC_HEIGHT, _SPORADIC_THICKNESS)
+    fade = smooth_step((height - hme) / _FADE)
+    total = fade * (f2_layer(height) + ledge) + e_region
+    share = smooth_step((height - _D_TOP) / (_E_BOTTOM - _D_TOP))
+    below = d_region(height, wide(layers.d_height), wide(layers.d_gradient))
+    joined = np.exp(share * np.log(np.maximum(total, 1.0)) + (1.0 - share) * np.log(below))
+    total = np.where(height >= _E_BOTTOM, total, joined)
     return np.asarray(total * smooth_step((height - BASE) / _ONSET))

@@ -150,8 +150,19 @@ class VerticalProfiles:
         return float(density[best]), float(h[best])
 
 
-def _splined(samples: FloatArray) -> FloatArray:
-    """Cell polynomials from spline coefficients, two of them beyond each end."""
+def to_polynomials(samples: FloatArray) -> FloatArray:
+    """Cubic polynomials of the cells from uniform B-spline coefficients.
+
+    Parameters
+    ----------
+    samples : ndarray, shape (..., cells + 3)
+        Spline coefficients; the first and last lie one node beyond the ends.
+
+    Returns
+    -------
+    ndarray, shape (..., cells, 4)
+        Coefficients of 1, t, t², t³ in each cell, t from 0 to 1.
+    """
     window = np.stack([samples[..., i : samples.shape[-1] - 3 + i] for i in range(4)], axis=-1)
     return np.asarray(window @ _TO_POLYNOMIAL.T)
 
@@ -188,7 +199,7 @@ def tabulated(
         bend = samples[:, 2:] - 2.0 * samples[:, 1:-1] + samples[:, :-2]
         coefficients = np.maximum(coefficients - bend / 6.0, 0.0)
     return VerticalProfiles(
-        base=base, top=base + SPACING * cells, polynomials=_splined(coefficients)
+        base=base, top=base + SPACING * cells, polynomials=to_polynomials(coefficients)
     )
 
 

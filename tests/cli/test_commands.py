@@ -54,7 +54,7 @@ def test_southern_and_western_places_work_as_typed():
 
 def test_csv_has_a_row_for_each_ray_and_dotted_keys():
     rows = list(csv.DictReader(io.StringIO(run(*PATH, *SUN, "--format", "csv").output)))
-    assert [r["wave"] for r in rows][0] == "ordinary"
+    assert rows[0]["wave"] == "ordinary"
     assert {"arrival.elevation_deg", "limiting.field_angle_deg", "advice.state"} <= set(rows[0])
     assert float(rows[0]["ionosphere.fxf2_mhz"]) > float(rows[0]["ionosphere.fof2_mhz"])
 

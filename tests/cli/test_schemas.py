@@ -23,6 +23,7 @@ from magion.answers import path as records
 from magion.answers.point import FieldAnswer, OneWave, WaveAnswer
 from magion.cli import main
 from magion.formats.profile import read_profile
+from magion.render.data import to_json
 
 FORMATS = Path(__file__).parents[2] / "docs" / "formats.md"
 JUNE, JUNE_NIGHT = "2026-06-21T12:00Z", "2026-06-21T00:00Z"
@@ -154,6 +155,13 @@ def test_answer_meets_its_schema(answer, command, case):
     validator(command).validate(answer(command, case))
 
 
+@pytest.mark.parametrize("number", [float("nan"), float("inf"), -float("inf")])
+def test_what_is_not_a_number_becomes_null(number):
+    record = records.Midpoint(latitude_deg=number, longitude_deg=1.5)
+    found = json.loads(to_json(record), parse_constant=refuse)
+    assert found == {"latitude_deg": None, "longitude_deg": 1.5}
+
+
 @pytest.mark.parametrize("command", NUMBER)
 def test_unknown_keys_are_admitted(answer, command):
     found = answer(*next(c for c in CASES if c[0] == command))
@@ -279,7 +287,7 @@ def test_what_each_case_is_for(answer):
 
 @pytest.mark.parametrize("case", ["both waves", "southern", "several rays"])
 def test_azimuths_of_launch_and_arrival_look_along_the_path(answer, case):
-    """Both point away from their own end; a wave leaves the great circle by a few degrees."""
+    """Both point away from their own end; a steep ray may swing aside, but not turn round."""
 
     def turn(one, other):
         return abs((one - other + 180.0) % 360.0 - 180.0)
@@ -287,8 +295,8 @@ def test_azimuths_of_launch_and_arrival_look_along_the_path(answer, case):
     found = answer("path", case)
     for wave in found["waves"]:
         for ray in [wave, *wave["rays"]]:
-            assert turn(ray["launch"]["azimuth_deg"], found["path"]["bearing_deg"]) < 10.0
-            assert turn(ray["arrival"]["azimuth_deg"], found["path"]["back_bearing_deg"]) < 10.0
+            assert turn(ray["launch"]["azimuth_deg"], found["path"]["bearing_deg"]) < 60.0
+            assert turn(ray["arrival"]["azimuth_deg"], found["path"]["back_bearing_deg"]) < 60.0
 
 
 @pytest.mark.parametrize("case", [c for c in PATHS if c != "no wave"])
@@ -411,15 +419,18 @@ def test_csv_of_a_path_has_one_row_a_ray_under_dotted_keys(answer):
     rays = [r for w in found["waves"] for r in [w, *w["rays"]]]
     assert len(table) == len(rays)
     for row, ray in zip(table, rays, strict=True):
-        assert row["wave"] == ray["wave"]
         assert row["arrives"] == "true"
-        assert float(row["arrival.elevation_deg"]) == ray["arrival"]["elevation_deg"]
-        assert float(row["limiting.field_angle_deg"]) == ray["limiting"]["field_angle_deg"]
-        assert (
-            float(row["path.midpoint.latitude_deg"]) == (found["path"]["midpoint"]["latitude_deg"])
-        )
+        for key, value in ray.items():
+            if isinstance(value, float):
+                assert float(row[key]) == value
+            elif isinstance(value, str) or value is None:
+                assert row.get(key, "") == (value or "")
+        for part in ("launch", "arrival", "index", "limiting"):
+            for key, value in ray[part].items():
+                assert row[f"{part}.{key}"] == ("" if value is None else str(value))
+        midpoint = found["path"]["midpoint"]["latitude_deg"]
+        assert float(row["path.midpoint.latitude_deg"]) == midpoint
         assert row["advice.headline"] == found["advice"]["headline"]
-        assert row["muf_mhz"] == ""
 
 
 @pytest.mark.parametrize(("command", "case"), [("field", "southern"), ("wave", "collisions")])

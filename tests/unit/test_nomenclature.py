@@ -28,6 +28,7 @@ PASS_THROUGH = {
     "arrays.norm",
     "errors.require_range",
     "formats.tables.Row.number",
+    "ionosphere.profile.to_polynomials",
     "polarization.stokes",
     "rays.batch.Track.sample",
 }
@@ -147,11 +148,11 @@ TABLE = read_table()
 
 
 def tags(text):
-    """Units in brackets; brackets around the indices of an array are not units."""
+    """Units in brackets; brackets of a formula or around the indices of an array are not units."""
     found = set()
     for inner in re.findall(r"\[([^\]]+)\](?!_)", text):
         parts = [p.strip() for p in inner.split(",")]
-        if parts == ["i", "j"]:
+        if parts == ["i", "j"] or re.search(r"\(| [+*-] ", inner):
             continue
         unknown = set(parts) - UNITS
         assert not unknown, f"unit {unknown} is not in docs/nomenclature.md"
