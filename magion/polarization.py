@@ -13,7 +13,7 @@ from typing import Final
 import numpy as np
 from numpy.typing import ArrayLike
 
-from magion.arrays import BoolArray, ComplexArray, FloatArray, cross, dot, unit
+from magion.arrays import BoolArray, ComplexArray, FloatArray, dot
 
 CIRCULAR_LIMIT_DB: Final = 3.0
 """Axial ratio up to which a wave is called circular [dB]."""
@@ -270,27 +270,6 @@ def ellipse(ratio: ArrayLike, tilt_angle: ArrayLike, right_hand: ArrayLike) -> C
     return np.stack([major * c - minor * s, major * s + minor * c])
 
 
-def wave_axes(wave_normal: FloatArray, field: FloatArray) -> tuple[FloatArray, FloatArray]:
-    """Transverse axes of a wave in a magnetic field.
-
-    Parameters
-    ----------
-    wave_normal : ndarray, shape (3, ...)
-        Direction of the wave normal.
-    field : ndarray, shape (3, ...)
-        Magnetic field.
-
-    Returns
-    -------
-    x, y : ndarray, shape (3, ...)
-        Unit vectors: x in the plane of wave normal and field, on the field's
-        side; y = z cross x [1]. NaN where the two are parallel.
-    """
-    z = unit(wave_normal)
-    x = unit(field - dot(field, z) * z)
-    return x, cross(z, x)
-
-
 def major_axis_bearing(
     field: ComplexArray, x: FloatArray, y: FloatArray, east: FloatArray, north: FloatArray
 ) -> FloatArray:
@@ -301,7 +280,7 @@ def major_axis_bearing(
     field : ndarray of complex, shape (2, ...)
         (E_x, E_y).
     x, y : ndarray, shape (3, ...)
-        The transverse axes, from :func:`wave_axes`.
+        The transverse axes, from :func:`magion.waves.wave_axes`.
     east, north : ndarray, shape (3, ...)
         Local axes of the ground.
 

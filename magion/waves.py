@@ -29,7 +29,7 @@ from enum import Enum
 import numpy as np
 from numpy.typing import ArrayLike
 
-from magion.arrays import BoolArray, ComplexArray, FloatArray, as_floats
+from magion.arrays import BoolArray, ComplexArray, FloatArray, as_floats, cross, dot, unit
 from magion.constants import (
     GYROFREQUENCY_PER_TESLA,
     PLASMA_FREQUENCY_SQUARED_PER_DENSITY,
@@ -332,6 +332,27 @@ def polarization_vectors(
     X, Y, Z, theta = as_floats(X, Y, Z, theta)
     Y_L = Y * np.cos(theta)
     return _vectors(_shape(Y_L, *_split(X, Z, Y_L, Y * np.sin(theta))))
+
+
+def wave_axes(wave_normal: FloatArray, field: FloatArray) -> tuple[FloatArray, FloatArray]:
+    """Transverse axes of a wave in a magnetic field.
+
+    Parameters
+    ----------
+    wave_normal : ndarray, shape (3, ...)
+        Direction of the wave normal.
+    field : ndarray, shape (3, ...)
+        Magnetic field.
+
+    Returns
+    -------
+    x, y : ndarray, shape (3, ...)
+        Unit vectors: x in the plane of wave normal and field, on the field's
+        side; y = z cross x [1]. NaN where the two are parallel.
+    """
+    z = unit(wave_normal)
+    x = unit(field - dot(field, z) * z)
+    return x, cross(z, x)
 
 
 @_quiet

@@ -1,4 +1,7 @@
-"""Rays that arrive at the receiver.
+"""Rays that arrive at the receiver, by one hop or several.
+
+A ray of several hops is reflected at the ground and may go on as either wave,
+so each has a sequence of waves, one a hop; the last sets the hand.
 
 A fan of launch directions in the plane of the great circle shows where each
 wave comes down; every crossing of the receiver's distance starts a search in
@@ -14,14 +17,14 @@ from typing import Final
 
 import numpy as np
 
-from magion.arrays import BoolArray, FloatArray, IntArray, dot
+from magion.arrays import BoolArray, FloatArray, IntArray, unit
 from magion.constants import EARTH_RADIUS
 from magion.errors import InputError
 from magion.field import MagneticField
 from magion.geometry import Place, great_circle, local_axes, travel
 from magion.ionosphere.medium import Medium
-from magion.rays.batch import Fate, Landing, Track, trace
-from magion.rays.equations import RaySet
+from magion.rays.batch import Fate, Track
+from magion.rays.chain import Chain, Specs, chain
 
 LARGEST_MISS: Final = 100.0
 """A homed ray comes down within this distance of the receiver [m]."""
@@ -29,17 +32,17 @@ LARGEST_MISS: Final = 100.0
 HOMED_TOLERANCE: Final = 4e-3
 """Error of position accepted in one step of a homed ray [m]."""
 
-_SEARCH_TOLERANCE = 1.0
-_GOOD_MISS = 40.0
-_ANTIPODES = math.radians(179.9)
-_JUMP = 12e3
 STEEPEST: Final = 4e6 * 180.0 / math.pi
 """Rays whose landing place moves faster than 4000 km a degree of elevation are
 left out: they graze the peak of a layer, and their power is spread so thin that
 they lie more than 15 dB below an ordinary ray [m/rad]."""
 
+_SEARCH_TOLERANCE = 1.0
+_GOOD_MISS = 40.0
 _MOST_TRIALS = 9
-_BESIDE = math.radians(0.5)
+_ANTIPODES = math.radians(179.9)
+_JUMP = 12e3
+_BESIDE_STEP = 5e-4
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -178,15 +181,23 @@ class HomedRay:
     Parameters
     ----------
     spec : int
-        Which of the wanted frequencies, waves and ionospheres it belongs to.
+        Which of the wanted frequencies, ionospheres and sequences it belongs to [1].
     zenith_vector : ndarray, shape (2,)
         Launch: zenith angle along and across the path [rad].
     launch, arrival : ndarray, shape (3,)
         Unit directions of travel at transmitter and receiver [1].
-    group_path, phase_path, apogee : float
-        Lengths and greatest height [m].
+    group_path, phase_path : float
+        Lengths, all hops together [m].
+    apogees : tuple of float
+        Greatest height of each hop [m].
+    bounces : tuple of ndarray, shape (3,)
+        Positions of the ground reflections [m].
+    incidences : tuple of ndarray, shape (3,)
+        Unit directions of travel before them [1].
     miss : float
         Distance from the receiver at which it comes down [m].
+    spreading : float
+        Area on the ground that a cone of rays fills, per solid angle [m²].
     high : bool
         True for the high-angle ray of a layer (the range grows with elevation).
     tracks : tuple of Track
@@ -199,15 +210,18 @@ class HomedRay:
     arrival: FloatArray
     group_path: float
     phase_path: float
-    apogee: float
+    apogees: tuple[float, ...]
+    bounces: tuple[FloatArray, ...]
+    incidences: tuple[FloatArray, ...]
     miss: float
+    spreading: float
     high: bool
     tracks: tuple[Track, ...]
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class Fan:
-    """Where the rays of one frequency, wave and ionosphere come down.
+    """Where the rays of one frequency, ionosphere and sequence come down.
 
     Parameters
     ----------
@@ -216,7 +230,7 @@ class Fan:
     along, across : ndarray, shape (n,)
         Landing place in the link's coordinates; NaN if the ray escapes [m].
     apogee : ndarray, shape (n,)
-        Greatest height [m].
+        Greatest height of the last hop [m].
     """
 
     zenith_angle: FloatArray
@@ -251,6 +265,19 @@ class Fan:
             apogee=np.concatenate([self.apogee, other.apogee])[order],
         )
 
+    def breaks(self) -> BoolArray:
+        """Gaps between neighbours in which a layer gives out.
+
+        Returns
+        -------
+        ndarray of bool, shape (n - 1,)
+            True where one ray escapes and the next does not, or where they turn
+            at heights more than 12 km apart [1].
+        """
+        landed = self.landed
+        jump = np.abs(np.diff(self.apogee)) > _JUMP
+        return np.asarray((landed[1:] != landed[:-1]) | (landed[1:] & landed[:-1] & jump))
+
 
 def default_zenith_angles(spacing_deg: float = 1.25) -> FloatArray:
     """Launch angles of a fan: from a little behind the zenith to the horizon.
@@ -272,13 +299,13 @@ def default_zenith_angles(spacing_deg: float = 1.25) -> FloatArray:
 def shoot(
     link: Link,
     w: FloatArray,
-    rays: RaySet,
+    specs: Specs,
     medium: Medium,
     field: MagneticField | None,
     *,
     tolerance: float = 1.0,
     keep_tracks: bool = False,
-) -> Landing:
+) -> Chain:
     """Trace rays from the link's transmitter.
 
     Parameters
@@ -287,69 +314,23 @@ def shoot(
         Where from and which way.
     w : ndarray, shape (2, n)
         Launch directions as zenith angle vectors [rad].
-    rays, medium, field
-        As for :func:`magion.rays.batch.trace`.
-    tolerance : float
-        Error of position accepted in one step; that of p is 1e-6 of it a metre [m].
-    keep_tracks : bool
-        Whether to keep the nodes.
+    specs, medium, field, tolerance, keep_tracks
+        As for :func:`magion.rays.chain.chain`.
 
     Returns
     -------
-    Landing
+    Chain
         The ends of the rays.
     """
-
-    def ends_of(directions: FloatArray, chosen: RaySet) -> Landing:
-        return trace(
-            np.repeat(link.up[:, None] * EARTH_RADIUS, directions.shape[1], axis=1),
-            link.launch(directions),
-            chosen,
-            medium,
-            field,
-            position_tolerance=tolerance,
-            direction_tolerance=1e-6 * tolerance,
-            keep_tracks=keep_tracks,
-        )
-
-    ends = ends_of(w, rays)
-    lost = np.flatnonzero(ends.fate == Fate.LOST)
-    if lost.size and field is not None:
-        # In the magnetic meridian, within the spitze's cone, the ordinary ray
-        # meets X = 1 with the field along its wave normal. Its neighbours on
-        # both sides pass the point and land symmetrically about its limit.
-        flux, _ = field.at((link.up * (EARTH_RADIUS + 200e3))[:, None])
-        north = np.array([link.forward @ flux[:, 0], link.left @ flux[:, 0]])
-        aside = _BESIDE * np.array([-north[1], north[0]]) / np.hypot(*north)
-        pair = np.concatenate([w[:, lost] + aside[:, None], w[:, lost] - aside[:, None]], axis=1)
-        beside = ends_of(pair, rays.take(np.concatenate([lost, lost])))
-        _take_middle(ends, beside, lost)
-    return ends
-
-
-def _take_middle(ends: Landing, beside: Landing, lost: IntArray) -> None:
-    """Give lost rays the middle of their two neighbours' ends."""
-    n = lost.size
-    both = (beside.fate[:n] == Fate.LANDED) & (beside.fate[n:] == Fate.LANDED)
-    ends.fate[lost] = np.where(both, Fate.LANDED, beside.fate[:n])
-    middle = 0.5 * (beside.position[:, :n] + beside.position[:, n:])
-    ends.position[:, lost] = middle * (EARTH_RADIUS / np.sqrt(dot(middle, middle)))
-    direction = 0.5 * (beside.direction[:, :n] + beside.direction[:, n:])
-    ends.direction[:, lost] = direction
-    for target, source in (
-        (ends.group_path, beside.group_path),
-        (ends.phase_path, beside.phase_path),
-        (ends.apogee, beside.apogee),
-    ):
-        target[lost] = 0.5 * (source[:n] + source[n:])
-    if beside.tracks:
-        for i, ray in enumerate(lost):
-            ends.tracks[ray] = beside.tracks[i]
+    start = np.repeat(link.up[:, None] * EARTH_RADIUS, w.shape[1], axis=1)
+    return chain(
+        start, link.launch(w), specs, medium, field, tolerance=tolerance, keep_tracks=keep_tracks
+    )
 
 
 def fans(
     link: Link,
-    specs: RaySet,
+    specs: Specs,
     medium: Medium,
     field: MagneticField | None,
     zenith_angles: FloatArray | None = None,
@@ -362,8 +343,8 @@ def fans(
     ----------
     link : Link
         Where from and which way.
-    specs : RaySet
-        One frequency, wave and ionosphere for each fan wanted.
+    specs : Specs
+        One frequency, ionosphere and sequence for each fan wanted.
     medium, field
         As for :func:`magion.rays.batch.trace`.
     zenith_angles : ndarray, optional
@@ -393,7 +374,7 @@ def _fan_rays(
     link: Link,
     angle: FloatArray,
     index: IntArray,
-    specs: RaySet,
+    specs: Specs,
     medium: Medium,
     field: MagneticField | None,
 ) -> list[Fan]:
@@ -402,27 +383,16 @@ def _fan_rays(
     along, across = link.coordinates(ends.position)
     # A ray that runs backward round the Earth is one that ran forward beyond half-way.
     along = np.where((along < -5000e3) & (angle > 0.0), along + 2.0 * np.pi * EARTH_RADIUS, along)
+    last = ends.apogees[specs.hops[index] - 1, np.arange(angle.size)]
     return [
-        Fan(
-            zenith_angle=angle[part],
-            along=along[part],
-            across=across[part],
-            apogee=ends.apogee[part],
-        )
+        Fan(zenith_angle=angle[part], along=along[part], across=across[part], apogee=last[part])
         for part in (index == i for i in range(specs.frequency.size))
     ]
 
 
-def _breaks(fan: Fan) -> BoolArray:
-    """Gaps between neighbours in which a layer gives out."""
-    landed = fan.landed
-    jump = np.abs(np.diff(fan.apogee)) > _JUMP
-    return np.asarray((landed[1:] != landed[:-1]) | (landed[1:] & landed[:-1] & jump))
-
-
 def _gaps(fan: Fan) -> FloatArray:
     """New launch angles inside the gaps in which a layer gives out."""
-    gap = np.flatnonzero(_breaks(fan))
+    gap = np.flatnonzero(fan.breaks())
     share = np.arange(1, 7) / 7.0
     low, high = fan.zenith_angle[gap], fan.zenith_angle[gap + 1]
     return np.asarray((low[:, None] + (high - low)[:, None] * share).ravel())
@@ -438,22 +408,22 @@ class _Search:
     high: FloatArray
     rising: BoolArray
     jacobian: FloatArray
-    distance: FloatArray
 
     def take(self, keep: BoolArray) -> "_Search":
         return _Search(
             self.spec[keep], self.w[:, keep], self.low[keep], self.high[keep],
-            self.rising[keep], self.jacobian[:, :, keep], self.distance[keep],
+            self.rising[keep], self.jacobian[:, :, keep],
         )  # fmt: skip
 
 
-def _candidates(link: Link, found: list[Fan], distance: float) -> _Search:
+def _candidates(link: Link, found: list[Fan]) -> _Search:
     rows = []
+    distance = link.distance
     for spec, fan in enumerate(found):
         gap = fan.along - distance
         crossing = np.flatnonzero(
             fan.landed[1:] & fan.landed[:-1] & (gap[1:] * gap[:-1] <= 0.0) & (gap[1:] != 0.0)
-            & ~_breaks(fan)
+            & ~fan.breaks()
         )  # fmt: skip
         for i in crossing:
             a0, a1 = fan.zenith_angle[i], fan.zenith_angle[i + 1]
@@ -468,8 +438,7 @@ def _candidates(link: Link, found: list[Fan], distance: float) -> _Search:
                 else slope
             )
             across = np.interp(start, fan.zenith_angle[i : i + 2], fan.across[i : i + 2])
-            size = math.sin(start) / start if start else 1.0
-            swing *= size
+            swing *= math.sin(start) / start if start else 1.0
             rows.append((spec, start, -across / swing, a0, a1, gap[i + 1] > gap[i], slope, swing))
     table = np.array(rows, dtype=np.float64).reshape(-1, 8)
     jacobian = np.zeros((2, 2, table.shape[0]))
@@ -481,25 +450,24 @@ def _candidates(link: Link, found: list[Fan], distance: float) -> _Search:
         high=table[:, 4],
         rising=table[:, 5] > 0.0,
         jacobian=jacobian,
-        distance=np.full(table.shape[0], distance),
     )
 
 
 def home(
     link: Link,
-    specs: RaySet,
+    specs: Specs,
     medium: Medium,
     field: MagneticField | None,
     found: list[Fan] | None = None,
 ) -> list[HomedRay]:
-    """All rays of one hop from the transmitter to the receiver.
+    """All rays from the transmitter to the receiver.
 
     Parameters
     ----------
     link : Link
         The path.
-    specs : RaySet
-        Frequency, wave and ionosphere wanted, one each.
+    specs : Specs
+        Frequency, ionosphere and sequence of waves wanted, one each.
     medium, field
         As for :func:`magion.rays.batch.trace`.
     found : list of Fan, optional
@@ -508,49 +476,65 @@ def home(
     Returns
     -------
     list of HomedRay
-        The rays, in order of spec and rising elevation; none where no ray of
-        that wave comes down at the receiver.
+        The rays, in order of spec and rising elevation; none where no such ray
+        comes down at the receiver.
     """
     if found is None:
         found = fans(link, specs, medium, field)
-    search = _converged(link, _candidates(link, found, link.distance), specs, medium, field)
-    if search.spec.size == 0:
+    search = _converged(link, _candidates(link, found), specs, medium, field)
+    count = search.spec.size
+    if count == 0:
         return []
+    # The rays themselves, and two beside each for the spreading.
+    step = _BESIDE_STEP
+    asides = np.repeat(step * np.eye(2), count, axis=1)
+    beside = np.concatenate([search.w, search.w], axis=1) + asides
+    chosen = specs.take(np.concatenate([search.spec] * 3))
     ends = shoot(
-        link, search.w, specs.take(search.spec), medium, field,
+        link, np.concatenate([search.w, beside], axis=1), chosen, medium, field,
         tolerance=HOMED_TOLERANCE, keep_tracks=True,
     )  # fmt: skip
     along, across = link.coordinates(ends.position)
-    miss = np.hypot(along - link.distance, across)
+    miss = np.hypot(along[:count] - link.distance, across[:count])
+    slope = np.stack([along, across]).reshape(2, 3, count)
+    slope = (slope[:, 1:] - slope[:, :1]) / step
+    area = np.abs(slope[0, 0] * slope[1, 1] - slope[0, 1] * slope[1, 0])
+    size = np.hypot(*search.w)
+    spreading = area / np.maximum(np.sinc(size / np.pi), 1e-6)
     order = np.lexsort((-search.w[0], search.spec))
     rays: list[HomedRay] = []
     for i in order:
         if ends.fate[i] != Fate.LANDED or not miss[i] <= LARGEST_MISS:
             continue
+        hops = int(specs.hops[search.spec[i]])
+        apogees = tuple(float(a) for a in ends.apogees[:hops, i])
         if rays and rays[-1].spec == search.spec[i]:
             apart = np.hypot(*(rays[-1].zenith_vector - search.w[:, i]))
-            if apart < 2e-4 and abs(rays[-1].apogee - ends.apogee[i]) < 2e3:
+            if apart < 2e-4 and abs(rays[-1].apogees[-1] - apogees[-1]) < 2e3:
                 continue
         rays.append(
             HomedRay(
                 spec=int(search.spec[i]),
                 zenith_vector=search.w[:, i],
                 launch=link.launch(search.w[:, [i]])[:, 0],
-                arrival=ends.direction[:, i] / math.sqrt(float(dot(*[ends.direction[:, i]] * 2))),
+                arrival=unit(ends.direction[:, i]),
                 group_path=float(ends.group_path[i]),
                 phase_path=float(ends.phase_path[i]),
-                apogee=float(ends.apogee[i]),
+                apogees=apogees,
+                bounces=tuple(ends.landings[k].position[:, i] for k in range(hops - 1)),
+                incidences=tuple(unit(ends.landings[k].direction[:, i]) for k in range(hops - 1)),
                 miss=float(miss[i]),
+                spreading=float(spreading[i]),
                 # range falls with the zenith angle: the high ray
                 high=not bool(search.rising[i]),
-                tracks=(ends.tracks[i],),
+                tracks=tuple(ends.landings[k].tracks[i] for k in range(hops)),
             )
         )
     return rays
 
 
 def _converged(
-    link: Link, search: _Search, specs: RaySet, medium: Medium, field: MagneticField | None
+    link: Link, search: _Search, specs: Specs, medium: Medium, field: MagneticField | None
 ) -> _Search:
     """Broyden's method in both components, kept within each bracket of the fan."""
     width = search.high - search.low
@@ -568,7 +552,7 @@ def _converged(
             link, w, specs.take(search.spec[active]), medium, field, tolerance=_SEARCH_TOLERANCE
         )
         along, across = link.coordinates(ends.position)
-        gap = np.stack([along - search.distance[active], across])
+        gap = np.stack([along - link.distance, across])
         lost = ~np.isfinite(along)
         miss = np.where(lost, np.inf, np.hypot(*gap))
         better = miss < best[active]
