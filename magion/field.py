@@ -305,7 +305,7 @@ def fit_field(
     when: datetime,
     *,
     margin: float = 400e3,
-    top: float = 600e3,
+    top: float = 640e3,
 ) -> FieldFit:
     """Fit the field model over the region of a path.
 

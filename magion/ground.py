@@ -46,7 +46,8 @@ class Ground:
             eps_r - i sigma / (omega eps_0) [1].
         """
         f = np.asarray(frequency, dtype=np.float64)
-        return self.permittivity - 1j * _CONDUCTIVITY_FACTOR * self.conductivity / f
+        lossy = 1j * (_CONDUCTIVITY_FACTOR * self.conductivity / f)
+        return np.asarray(self.permittivity - lossy, dtype=np.complex128)
 
 
 AVERAGE: Final = Ground(permittivity=13.0, conductivity=0.005)

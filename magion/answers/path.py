@@ -1,31 +1,35 @@
 """The answer for one path: which hand, is the wave there, and why."""
 
 import math
-from collections.abc import Sequence
 from dataclasses import dataclass, fields
-from datetime import datetime
+from datetime import datetime, timedelta
 from typing import Final
 
 import numpy as np
 
-from magion.answers.inputs import (
-    IonosphereInput,
-    LocalIonosphere,
-    instant,
-    ionosphere_over,
-    require_frequency,
+from magion.answers.certainty import (
+    Change,
+    PathMufs,
+    StateProbabilities,
+    changes,
+    confidence_of,
+    least_fof2,
+    path_mufs,
+    probabilities,
+    state_of,
 )
+from magion.answers.inputs import IonosphereInput, instant, require_frequency
+from magion.answers.modes import (
+    GREATEST_ABSORPTION_DB,
+    ModeRay,
+    ModesFound,
+    doppler_of_layers,
+    find_modes,
+    hop_counts,
+)
+from magion.answers.scene import Scene, scene_of, with_changed_layers
 from magion.constants import EARTH_RADIUS, SPEED_OF_LIGHT
-from magion.field import (
-    MODEL,
-    FieldFit,
-    declination,
-    dip,
-    field_at,
-    fit_field,
-    flux_density,
-    gyrofrequency,
-)
+from magion.field import MODEL, declination, dip, field_at, flux_density, gyrofrequency
 from magion.geometry import Place, azimuth_elevation, great_circle, local_axes
 from magion.polarization import (
     LARGEST_AXIAL_RATIO_DB,
@@ -35,11 +39,10 @@ from magion.polarization import (
     hand_of,
     major_axis_bearing,
     shape_of,
-    wave_axes,
 )
-from magion.rays.equations import RaySet
-from magion.rays.exit import PlasmaPoint, limiting_polarization, plasma_at_apex
-from magion.rays.homing import Fan, HomedRay, Link, fans, home, link_between
+from magion.rays.exit import PlasmaPoint
+from magion.rays.homing import Fan, Link, link_between
+from magion.rays.muf import branches, skip_distance
 from magion.waves import (
     MODES,
     Mode,
@@ -47,6 +50,7 @@ from magion.waves import (
     extraordinary_critical_frequency,
     gyro_ratio,
     plasma_ratio,
+    wave_axes,
 )
 
 SCHEMA: Final = "magion/path/1"
@@ -255,6 +259,8 @@ class RayAnswer:
         Reflecting layer, and the trade's label.
     hops : int or None
         Number of hops [1].
+    sequence : str or None
+        Wave on each hop, "o" or "x"; the last is this wave.
     launch, arrival, index, limiting
         Parts of their own.
     group_path_km, phase_path_km, apogee_km : float or None
@@ -275,6 +281,11 @@ class RayAnswer:
         True bearing of the major axis as projected on the ground, 0 to 180 [deg].
     shape : Shape or None
         Circular, elliptical or linear.
+    other_wave_db : float or None
+        Power of the other wave fed on the way out, to this one's; None below
+        -60 dB [dB].
+    doppler_hz : float or None
+        Doppler shift at the stated rates of foF2 and hmF2 [Hz].
     """
 
     wave: Mode
@@ -283,6 +294,7 @@ class RayAnswer:
     layer: str | None = None
     hops: int | None = None
     label: str | None = None
+    sequence: str | None = None
     launch: Launch | None = None
     arrival: Arrival | None = None
     group_path_km: float | None = None
@@ -300,6 +312,8 @@ class RayAnswer:
     major_axis_bearing_deg: float | None = None
     shape: Shape | None = None
     limiting: Limiting | None = None
+    other_wave_db: float | None = None
+    doppler_hz: float | None = None
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -333,19 +347,20 @@ class Rejection:
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
-class StateProbabilities:
-    """Probability of each state.
+class Fading:
+    """How the two waves beat, for stated rates of foF2 and hmF2.
 
     Parameters
     ----------
-    both, ordinary_only, extraordinary_only, none : float
-        Probabilities, which add up to 1 [1].
+    doppler_split_hz : float
+        Doppler shift of the extraordinary less that of the ordinary wave [Hz].
+    period_s : float or None
+        Time from fade to fade, in which the plane of polarization makes half a
+        turn; None where the split vanishes [s].
     """
 
-    both: float
-    ordinary_only: float
-    extraordinary_only: float
-    none: float
+    doppler_split_hz: float
+    period_s: float | None
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -376,6 +391,10 @@ class Advice:
         "high", "medium", "low" or "cannot_tell".
     caveats : tuple of str
         What to keep in mind.
+    fading : Fading or None
+        How the waves beat, where rates were stated.
+    changes : tuple of Change or None
+        The day's times of change, where they were asked for.
     """
 
     state: str
@@ -391,6 +410,8 @@ class Advice:
     headline: str
     confidence: str | None
     caveats: tuple[str, ...]
+    fading: Fading | None = None
+    changes: tuple[Change, ...] | None = None
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -429,6 +450,8 @@ def answer_path(
     frequency_mhz: float,
     when: datetime | None = None,
     ionosphere: IonosphereInput | None = None,
+    *,
+    with_changes: bool = False,
 ) -> PathAnswer:
     """Which hand each wave arrives with, and which to switch to.
 
@@ -444,6 +467,9 @@ def answer_path(
         Instant; without a zone UTC; now if not given.
     ionosphere : IonosphereInput, optional
         What is known of the ionosphere; else the climatology at 120 sfu.
+    with_changes : bool
+        Whether to add the times of that UTC day at which a wave comes or goes
+        (some seconds) [1].
 
     Returns
     -------
@@ -461,24 +487,18 @@ def answer_path(
     moment = instant(when)
     given = ionosphere or IonosphereInput()
     link = link_between(transmitter, receiver)
+    scene = scene_of(link, [moment], given)
+    overhead = scene.overheads[0]
+    modes = _modes_at(scene, frequency)
+    found = find_modes(scene, frequency, modes, 0)
+    mufs = path_mufs(scene, hop_counts(link.distance)[:1])
+    shifts = _doppler_shifts(scene, frequency, found, given)
+    waves = tuple(_wave(scene, frequency, m, found, mufs, shifts) for m in MODES)
+    pair = (waves[0], waves[1])
     mid_latitude, mid_longitude = link.point(0.5)
-    overhead = ionosphere_over(given, mid_latitude, mid_longitude, moment)
-    field = fit_field(
-        transmitter.latitude, transmitter.longitude, receiver.latitude, receiver.longitude, moment
-    )
-    scene = _Scene(
-        link=link,
-        frequency=frequency,
-        overhead=overhead,
-        field=field,
-        gyro_limit=_greatest_gyrofrequency(link, field),
-    )
-    waves = _waves(scene)
-    middle = _midpoint_field(mid_latitude, mid_longitude, moment)
     at_peak = field_at(mid_latitude, mid_longitude, overhead.hmf2, moment)
-    fxf2 = extraordinary_critical_frequency(
-        overhead.fof2, float(gyrofrequency(flux_density(at_peak)))
-    )
+    gyro = float(gyrofrequency(flux_density(at_peak)))
+    day = _changes_of_day(link, moment, frequency, given) if with_changes else None
     return PathAnswer(
         schema=SCHEMA,
         transmitter=_end(transmitter),
@@ -486,29 +506,18 @@ def answer_path(
         time_utc=moment.strftime("%Y-%m-%dT%H:%M:%SZ"),
         frequency_mhz=frequency_mhz,
         path=_geometry(link),
-        field=middle,
+        field=_midpoint_field(mid_latitude, mid_longitude, moment),
         ionosphere=MidpointIonosphere(
             source=overhead.source,
             fof2_mhz=overhead.fof2 / 1e6,
-            fxf2_mhz=float(fxf2) / 1e6,
+            fxf2_mhz=float(extraordinary_critical_frequency(overhead.fof2, gyro)) / 1e6,
             hmf2_km=overhead.hmf2 / 1e3,
             foe_mhz=None if overhead.foe is None else overhead.foe / 1e6,
-            fof2_error_mhz=given.fof2_error_mhz,
+            fof2_error_mhz=None if overhead.fof2_error is None else overhead.fof2_error / 1e6,
         ),
-        waves=waves,
-        advice=_advice(scene, waves),
+        waves=pair,
+        advice=_advice(scene, frequency, pair, mufs, gyro, day),
     )
-
-
-@dataclass(frozen=True, slots=True, kw_only=True)
-class _Scene:
-    """Everything the waves of one path are made from."""
-
-    link: Link
-    frequency: float
-    overhead: LocalIonosphere
-    field: FieldFit
-    gyro_limit: float
 
 
 def _end(place: Place) -> End:
@@ -552,73 +561,69 @@ def _midpoint_field(latitude: float, longitude: float, moment: datetime) -> Midp
     )
 
 
-def _greatest_gyrofrequency(link: Link, field: FieldFit) -> float:
-    """Greatest gyrofrequency at 100 km along the path [Hz]."""
-    share = np.linspace(0.0, 1.0, 21) * link.angle
-    along = link.up[:, None] * np.cos(share) + link.forward[:, None] * np.sin(share)
-    flux, _ = field.at(along * (EARTH_RADIUS + 100e3))
-    return float(gyrofrequency(flux_density(flux)).max())
+def _modes_at(scene: Scene, frequency: float) -> tuple[Mode, ...]:
+    """Waves that the ionosphere can turn back at a frequency."""
+    return MODES if frequency > scene.gyro_limit else (Mode.ORDINARY,)
 
 
-def _waves(scene: _Scene) -> tuple[WaveOnPath, WaveOnPath]:
-    modes = [m for m in MODES if m is Mode.ORDINARY or scene.frequency > scene.gyro_limit]
-    specs = RaySet(
-        frequency=np.full(len(modes), scene.frequency),
-        extraordinary=np.array([m is Mode.EXTRAORDINARY for m in modes]),
-        which=np.zeros(len(modes), dtype=np.intp),
-    )
-    medium = scene.overhead.profiles
-    found = fans(scene.link, specs, medium, scene.field)
-    rays = home(scene.link, specs, medium, scene.field, found)
-    answers = []
-    for mode in MODES:
-        if mode not in modes:
-            answers.append(_below_gyrofrequency(scene, mode))
-            continue
-        i = modes.index(mode)
-        own = [_ray_answer(scene, mode, ray, found[i]) for ray in rays if ray.spec == i]
+def _wave(
+    scene: Scene,
+    frequency: float,
+    mode: Mode,
+    found: ModesFound,
+    mufs: PathMufs,
+    shifts: dict[int, float],
+) -> WaveOnPath:
+    """One wave: its strongest ray leads; the others follow in order of level."""
+    if mode not in found.fans:
+        return WaveOnPath(
+            wave=mode,
+            arrives=False,
+            reason=(
+                f"{frequency / 1e6:.3f} MHz is at or below the gyrofrequency along the path "
+                f"({scene.gyro_limit / 1e6:.3f} MHz at 100 km), where this wave is not turned back"
+            ),
+        )
+    muf = float(mufs.any_layer[MODES.index(mode), 0]) / 1e6
+    muf_mhz = muf if math.isfinite(muf) else None
+    margin = None if muf_mhz is None else muf_mhz - frequency / 1e6
+    skip = skip_distance(found.fans[mode])
+    skip_km = None if skip is None else skip / 1e3
+    own = sorted((r for r in found.rays if r.wave is mode), key=lambda r: -r.level_db)
+    strong = [r for r in own if r.absorption_db <= GREATEST_ABSORPTION_DB]
+    if not strong:
+        reason = _reason(scene, frequency, found.fans[mode])
         if own:
-            answers.append(_leading(own[0], own[1:]))
-        else:
-            answers.append(
-                WaveOnPath(
-                    wave=mode,
-                    arrives=False,
-                    reason=_reason(scene, mode, found[i]),
-                    index=_turning_point(scene, mode),
-                    skip_km=_skip_km(found[i]),
-                )
+            reason = (
+                f"it is absorbed by {own[0].absorption_db:.0f} dB, more than "
+                f"{GREATEST_ABSORPTION_DB:.0f} dB"
             )
-    return answers[0], answers[1]
+        return WaveOnPath(
+            wave=mode,
+            arrives=False,
+            reason=reason,
+            index=_turning_point(scene, frequency, mode),
+            absorption_db=own[0].absorption_db if own else None,
+            margin_mhz=margin,
+            skip_km=skip_km,
+            muf_mhz=muf_mhz,
+        )
+    answers = [_ray_answer(scene, r, margin, skip_km, shifts.get(id(r))) for r in strong]
+    values = {f.name: getattr(answers[0], f.name) for f in fields(RayAnswer)}
+    return WaveOnPath(**values, rays=tuple(answers[1:]), muf_mhz=muf_mhz)
 
 
-def _leading(first: RayAnswer, others: Sequence[RayAnswer]) -> WaveOnPath:
-    values = {f.name: getattr(first, f.name) for f in fields(RayAnswer)}
-    return WaveOnPath(**values, rays=tuple(others))
-
-
-def _below_gyrofrequency(scene: _Scene, mode: Mode) -> WaveOnPath:
-    return WaveOnPath(
-        wave=mode,
-        arrives=False,
-        reason=(
-            f"{scene.frequency / 1e6:.3f} MHz is at or below the gyrofrequency along the path "
-            f"({scene.gyro_limit / 1e6:.3f} MHz at 100 km), where this wave is not turned back"
-        ),
-    )
-
-
-def _ray_answer(scene: _Scene, mode: Mode, ray: HomedRay, fan: Fan) -> RayAnswer:
-    which, medium = 0, scene.overhead.profiles
-    track = ray.tracks[-1]
+def _ray_answer(
+    scene: Scene,
+    mode_ray: ModeRay,
+    margin_mhz: float | None,
+    skip_km: float | None,
+    doppler_hz: float | None,
+) -> RayAnswer:
+    ray, mode, down = mode_ray.ray, mode_ray.wave, mode_ray.down
     receiver, transmitter = scene.link.receiver, scene.link.transmitter
-    down = limiting_polarization(track, scene.frequency, which, medium, scene.field)
-    up = limiting_polarization(
-        ray.tracks[0], scene.frequency, which, medium, scene.field, upward=True
-    )
-    top = plasma_at_apex(track, scene.frequency, which, medium, scene.field)
-    number = MODES.index(mode)
-    arriving, launched = down.waves()[number], up.waves()[number]
+    arriving = down.waves()[MODES.index(mode)]
+    launched = mode_ray.up.waves()[MODES.index(mode_ray.sequence[0])]
     azimuth, elevation = azimuth_elevation(ray.launch, transmitter.latitude, transmitter.longitude)
     from_azimuth, from_elevation = azimuth_elevation(
         -ray.arrival, receiver.latitude, receiver.longitude
@@ -626,20 +631,21 @@ def _ray_answer(scene: _Scene, mode: Mode, ray: HomedRay, fan: Fan) -> RayAnswer
     east, north, _ = local_axes(receiver.latitude, receiver.longitude)
     axis = major_axis_bearing(arriving, *wave_axes(down.wave_normal, down.field), east, north)
     hand = hand_of(arriving)
-    ratio_db = float(axial_ratio_db(arriving))
-    layer = _layer(scene.overhead, ray.apogee)
+    ratio_db = _ratio_db(arriving)
     latitude, longitude = down.place
+    other_db = 10.0 * math.log10(max(mode_ray.coupling, 1e-12))
     return RayAnswer(
         wave=mode,
         arrives=True,
-        layer=layer,
+        layer=mode_ray.layers[-1],
         hops=len(ray.tracks),
-        label=f"{len(ray.tracks)}{layer}({mode.letter})",
+        label=mode_ray.label,
+        sequence="".join(m.letter for m in mode_ray.sequence),
         launch=Launch(
             azimuth_deg=math.degrees(float(azimuth)),
             elevation_deg=math.degrees(float(elevation)),
             hand=hand_of(launched),
-            axial_ratio_db=_ratio_or_none(float(axial_ratio_db(launched))),
+            axial_ratio_db=_ratio_or_none(_ratio_db(launched)),
         ),
         arrival=Arrival(
             azimuth_deg=math.degrees(float(from_azimuth)),
@@ -648,9 +654,12 @@ def _ray_answer(scene: _Scene, mode: Mode, ray: HomedRay, fan: Fan) -> RayAnswer
         group_path_km=ray.group_path / 1e3,
         group_delay_ms=ray.group_path / SPEED_OF_LIGHT * 1e3,
         phase_path_km=ray.phase_path / 1e3,
-        apogee_km=ray.apogee / 1e3,
-        index=_index(top, mode),
-        skip_km=_skip_km(fan),
+        apogee_km=ray.apogees[-1] / 1e3,
+        index=_index(mode_ray.top, mode),
+        absorption_db=mode_ray.absorption_db,
+        level_db=mode_ray.level_db,
+        margin_mhz=margin_mhz,
+        skip_km=skip_km,
         receive_hand=hand,
         transmit_hand=hand.opposite,
         axial_ratio_db=_ratio_or_none(ratio_db),
@@ -662,7 +671,13 @@ def _ray_answer(scene: _Scene, mode: Mode, ray: HomedRay, fan: Fan) -> RayAnswer
             longitude_deg=math.degrees(longitude),
             field_angle_deg=math.degrees(down.theta),
         ),
+        other_wave_db=other_db if other_db > -60.0 else None,
+        doppler_hz=doppler_hz,
     )
+
+
+def _ratio_db(field: np.ndarray) -> float:
+    return float(axial_ratio_db(field))
 
 
 def _ratio_or_none(ratio_db: float) -> float | None:
@@ -682,35 +697,13 @@ def _index(point: PlasmaPoint, mode: Mode) -> IndexAtApex:
     )
 
 
-def _layer(overhead: LocalIonosphere, apogee: float) -> str:
-    """The layer that turned a ray back, by its greatest height."""
-    layers = overhead.layers
-    e_peak = overhead.profiles.e_peak()
-    e_height = layers.hme if layers else (e_peak[1] if e_peak else 110e3)
-    if apogee <= e_height + 8e3:
-        return "E"
-    if layers and layers.f1_share >= 0.5 and apogee <= layers.hmf1:
-        return "F1"
-    return "F2"
-
-
-def _skip_km(fan: Fan) -> float | None:
-    """Least distance at which the rays of a fan come down [km]."""
-    ahead = fan.landed & (fan.zenith_angle >= 0.0)
-    if not ahead.any():
-        return None
-    if fan.landed[np.argmin(np.abs(fan.zenith_angle))]:
-        return 0.0
-    return max(0.0, float(np.min(fan.along[ahead]))) / 1e3
-
-
-def _reason(scene: _Scene, mode: Mode, fan: Fan) -> str:
+def _reason(scene: Scene, frequency: float, fan: Fan) -> str:
     """Why no ray of a wave comes down at the receiver."""
-    megahertz = f"{scene.frequency / 1e6:.3f} MHz"
-    ahead = fan.landed & (fan.zenith_angle >= 0.0)
-    if not ahead.any():
+    megahertz = f"{frequency / 1e6:.3f} MHz"
+    ahead = [b for b in branches(fan) if b.greatest > 0.0]
+    if not ahead:
         return f"{megahertz} passes through the ionosphere at every angle"
-    skip, reach = float(np.min(fan.along[ahead])), float(np.max(fan.along[ahead]))
+    skip, reach = min(b.least for b in ahead), max(b.greatest for b in ahead)
     distance = scene.link.distance
     if distance < skip:
         return (
@@ -718,23 +711,24 @@ def _reason(scene: _Scene, mode: Mode, fan: Fan) -> str:
             f"{skip / 1e3:.0f} km (skip distance)"
         )
     if distance > reach:
-        return f"one hop of this wave reaches {reach / 1e3:.0f} km at most"
+        hops = max(hop_counts(distance))
+        return f"one hop reaches {reach / 1e3:.0f} km at most, and {hops} do not come down here"
     return "no ray of this wave comes down at this distance, between those of two layers"
 
 
-def _turning_point(scene: _Scene, mode: Mode) -> IndexAtApex | None:
+def _turning_point(scene: Scene, frequency: float, mode: Mode) -> IndexAtApex | None:
     """Overhead of the midpoint, where a wave sent straight up would be turned back."""
     latitude, longitude = scene.link.point(0.5)
-    profiles = scene.overhead.profiles
-    height = np.arange(profiles.base, scene.overhead.hmf2, 50.0)
-    density, _ = profiles.at_height(height)
-    X = plasma_ratio(density, scene.frequency)
+    overhead = scene.overheads[0]
+    height = np.arange(overhead.profiles.base, overhead.hmf2, 50.0)
+    density, _ = overhead.profiles.at_height(height)
+    X = plasma_ratio(density, frequency)
     _, _, up = local_axes(latitude, longitude)
     flux, _ = scene.field.at(up[:, None] * (EARTH_RADIUS + height))
     magnitude = flux_density(flux)
-    Y = gyro_ratio(magnitude, scene.frequency)
+    Y = gyro_ratio(magnitude, frequency)
     level = 1.0 if mode is Mode.ORDINARY else 1.0 - Y
-    reached = np.flatnonzero(level <= X)
+    reached = np.flatnonzero(X - level >= 0.0)
     if reached.size == 0:
         return None
     i = int(reached[0])
@@ -749,18 +743,57 @@ def _turning_point(scene: _Scene, mode: Mode) -> IndexAtApex | None:
     )
 
 
-def _advice(scene: _Scene, waves: tuple[WaveOnPath, WaveOnPath]) -> Advice:
+def _doppler_shifts(
+    scene: Scene, frequency: float, found: ModesFound, given: IonosphereInput
+) -> dict[int, float]:
+    """Doppler shift of every ray at the stated rates, by the ray's identity [Hz]."""
+    fof2_rate, hmf2_rate = given.fof2_rate_mhz_per_h, given.hmf2_rate_km_per_h
+    if fof2_rate is None and hmf2_rate is None:
+        return {}
+    changed, steps = with_changed_layers(scene)
+    rates = np.array([(fof2_rate or 0.0) * 1e6, (hmf2_rate or 0.0) * 1e3]) / 3600.0
+    return {
+        id(ray): float(
+            -frequency
+            / SPEED_OF_LIGHT
+            * (doppler_of_layers(changed, frequency, (0, 1, 2), ray) / steps @ rates)
+        )
+        for ray in found.rays
+    }
+
+
+def _changes_of_day(
+    link: Link, moment: datetime, frequency: float, given: IonosphereInput
+) -> tuple[Change, ...]:
+    """Times of the UTC day at which a wave comes or goes."""
+    midnight = moment.replace(hour=0, minute=0, second=0, microsecond=0)
+    moments = [midnight + timedelta(minutes=30 * i) for i in range(48)]
+    if given.readings is not None:
+        moments = [m for m in moments if given.readings.covers(m)]
+    if len(moments) < 2 or given.profile is not None:
+        return ()
+    scene = scene_of(link, moments, given)
+    mufs = path_mufs(scene, hop_counts(link.distance)[:1])
+    relative = np.array([(o.fof2_error or 0.0) / o.fof2 for o in scene.overheads])
+    return changes(moments, mufs, frequency, relative)
+
+
+def _advice(
+    scene: Scene,
+    frequency: float,
+    waves: tuple[WaveOnPath, WaveOnPath],
+    mufs: PathMufs,
+    gyro: float,
+    day: tuple[Change, ...] | None,
+) -> Advice:
     ordinary, extraordinary = waves
-    state = {
-        (True, True): "both",
-        (True, False): "ordinary_only",
-        (False, True): "extraordinary_only",
-        (False, False): "none",
-    }[ordinary.arrives, extraordinary.arrives]
-    taken = ordinary if ordinary.arrives else extraordinary if extraordinary.arrives else None
+    state = state_of(ordinary.arrives, extraordinary.arrives)
+    taken = _taken(waves)
+    chances = _probabilities(scene, frequency, waves, mufs, gyro)
+    fading = _fading(waves)
     return Advice(
         state=state,
-        state_probabilities=None,
+        state_probabilities=chances,
         wave=taken.wave if taken else None,
         receive_hand=taken.receive_hand if taken else None,
         transmit_hand=taken.transmit_hand if taken else None,
@@ -770,9 +803,52 @@ def _advice(scene: _Scene, waves: tuple[WaveOnPath, WaveOnPath]) -> Advice:
         separation_db=None,
         limited_by=None,
         headline=_headline(taken, waves),
-        confidence=None,
-        caveats=_caveats(scene, waves),
+        confidence=None if chances is None else confidence_of(chances, state),
+        caveats=_caveats(scene, frequency, waves, chances, state),
+        fading=fading,
+        changes=day,
     )
+
+
+def _taken(waves: tuple[WaveOnPath, WaveOnPath]) -> WaveOnPath | None:
+    """The stronger wave; within 3 dB, the ordinary."""
+    ordinary, extraordinary = waves
+    if not (ordinary.arrives and extraordinary.arrives):
+        return ordinary if ordinary.arrives else extraordinary if extraordinary.arrives else None
+    lead = (extraordinary.level_db or 0.0) - (ordinary.level_db or 0.0)
+    return extraordinary if lead > 3.0 else ordinary
+
+
+def _probabilities(
+    scene: Scene,
+    frequency: float,
+    waves: tuple[WaveOnPath, WaveOnPath],
+    mufs: PathMufs,
+    gyro: float,
+) -> StateProbabilities | None:
+    overhead = scene.overheads[0]
+    if overhead.fof2_error is None:
+        return None
+    levels = []
+    for i, wave in enumerate(waves):
+        rays = (wave, *wave.rays) if wave.arrives else ()
+        muf = float(mufs.f_region[i, 0])
+        absorbed = not wave.arrives and wave.absorption_db is not None
+        if any(r.layer in ("E", "Es") for r in rays):
+            levels.append(0.0)
+        elif absorbed or not math.isfinite(muf) or frequency <= (i and scene.gyro_limit):
+            levels.append(math.inf)
+        else:
+            levels.append(least_fof2(frequency, muf, overhead.fof2, gyro, i == 0))
+    return probabilities((levels[0], levels[1]), overhead.fof2, overhead.fof2_error)
+
+
+def _fading(waves: tuple[WaveOnPath, WaveOnPath]) -> Fading | None:
+    shifts = [w.doppler_hz for w in waves]
+    if shifts[0] is None or shifts[1] is None:
+        return None
+    split = shifts[1] - shifts[0]
+    return Fading(doppler_split_hz=split, period_s=1.0 / abs(split) if split else None)
 
 
 def _headline(taken: WaveOnPath | None, waves: tuple[WaveOnPath, WaveOnPath]) -> str:
@@ -780,6 +856,10 @@ def _headline(taken: WaveOnPath | None, waves: tuple[WaveOnPath, WaveOnPath]) ->
         return "Neither wave arrives: no hand will help on this frequency now."
     other = waves[1] if taken is waves[0] else waves[0]
     company = "both waves arrive" if other.arrives else "the other wave does not arrive"
+    if other.arrives and other.level_db is not None and taken.level_db is not None:
+        lead = taken.level_db - other.level_db
+        if abs(lead) >= 1.0:
+            company = f"the other wave is {abs(lead):.0f} dB {'weaker' if lead > 0 else 'stronger'}"
     if taken.shape is Shape.LINEAR:
         return (
             f"{taken.wave.value.capitalize()} wave, nearly linear: use a single wire along "
@@ -791,9 +871,17 @@ def _headline(taken: WaveOnPath | None, waves: tuple[WaveOnPath, WaveOnPath]) ->
     )
 
 
-def _caveats(scene: _Scene, waves: tuple[WaveOnPath, WaveOnPath]) -> tuple[str, ...]:
-    caveats = list(scene.overhead.caveats)
-    if scene.frequency <= scene.gyro_limit:
+def _caveats(
+    scene: Scene,
+    frequency: float,
+    waves: tuple[WaveOnPath, WaveOnPath],
+    chances: StateProbabilities | None,
+    state: str,
+) -> tuple[str, ...]:
+    caveats = list(scene.overheads[0].caveats)
+    if chances is not None and confidence_of(chances, state) == "cannot_tell":
+        caveats.append("foF2 is too uncertain to tell which waves arrive.")
+    if frequency <= scene.gyro_limit:
         caveats.append(
             "At frequencies near the gyrofrequency the ground wave may be what is heard."
         )
@@ -807,6 +895,16 @@ def _caveats(scene: _Scene, waves: tuple[WaveOnPath, WaveOnPath]) -> tuple[str, 
             caveats.append(
                 f"The {wave.wave.value} wave leaves nearly across the field "
                 f"({wave.limiting.field_angle_deg:.0f}°): a small change turns its hand over."
+            )
+        if wave.arrives and wave.other_wave_db is not None and wave.other_wave_db > -20.0:
+            caveats.append(
+                f"On its way out the {wave.wave.value} wave feeds the other one "
+                f"({wave.other_wave_db:.0f} dB): no hand is pure here."
+            )
+        if wave.arrives and (wave.hops or 1) > 1:
+            caveats.append(
+                f"The {wave.wave.value} wave's strongest ray makes {wave.hops} hops; average land "
+                "is taken at the bounces."
             )
     if all(w.arrives for w in waves) and waves[0].receive_hand is waves[1].receive_hand:
         caveats.append("Both waves arrive with the same hand: the relay cannot part them.")

@@ -170,11 +170,18 @@ def ionosphere_options(command: _Decorated) -> _Decorated:
             ("--fof2-error", NUMBER, "Its standard deviation [MHz]."),
             ("--hmf2", NUMBER, "hmF2 from an ionosonde [km]."),
             ("--foe", NUMBER, "foE from an ionosonde [MHz]."),
+            ("--foes", NUMBER, "foEs: sporadic E along the path [MHz]."),
             (
                 "--profile",
                 click.Path(path_type=Path),
                 "Measured profile: CSV of height_km,electron_density_m3.",
             ),
+            (
+                "--readings",
+                click.Path(path_type=Path),
+                "Ionosonde readings over the day: CSV of time_utc,fof2_mhz,...",
+            ),
+            ("--readings-at", PLACE, "Where they were taken, if the file does not say."),
         )
     ):
         command = click.option(names, type=kind, help=text)(command)
@@ -188,14 +195,20 @@ def ionosphere_from(
     fof2_error: float | None,
     hmf2: float | None,
     foe: float | None,
+    foes: float | None,
     profile: Path | None,
+    readings: Path | None,
+    readings_at: "Place | None",
+    **rates: float | None,
 ) -> "IonosphereInput":
     """The ionosphere that the shared options describe.
 
     Parameters
     ----------
-    flux, sunspots, fof2, fof2_error, hmf2, foe, profile
+    flux, sunspots, fof2, fof2_error, hmf2, foe, foes, profile, readings, readings_at
         Values of the options of :func:`ionosphere_options`.
+    **rates : float or None
+        Rates of foF2 and hmF2, where a command asks for them.
 
     Returns
     -------
@@ -207,10 +220,19 @@ def ionosphere_from(
     InputError
         If a value is out of range, two contradict, or the file is wrong.
     """
+    from dataclasses import replace
+
     from magion.answers.inputs import IonosphereInput
+    from magion.errors import InputError
     from magion.formats.profile import read_profile
+    from magion.formats.readings import read_readings
     from magion.formats.tables import printable
 
+    table = None if readings is None else read_readings(readings)
+    if readings_at is not None:
+        if table is None:
+            raise InputError("--readings-at is given without --readings; give both")
+        table = replace(table, place=readings_at)
     return IonosphereInput(
         flux=flux,
         sunspots=sunspots,
@@ -220,4 +242,8 @@ def ionosphere_from(
         foe_mhz=foe,
         profile=None if profile is None else read_profile(profile),
         profile_name=None if profile is None else printable(profile.name),
+        foes_mhz=foes,
+        readings=table,
+        readings_name=None if readings is None else printable(readings.name),
+        **rates,
     )

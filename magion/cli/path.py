@@ -25,12 +25,26 @@ if TYPE_CHECKING:
 @click.option("-f", "--frequency", type=NUMBER, required=True, help="Frequency [MHz].")
 @click.option("--time", "when", type=INSTANT, help="Time, ISO 8601, UTC; now by default.")
 @ionosphere_options
+@click.option(
+    "--fof2-rate",
+    "fof2_rate_mhz_per_h",
+    type=NUMBER,
+    help="How fast foF2 changes [MHz/h], for Doppler and fading.",
+)
+@click.option(
+    "--hmf2-rate",
+    "hmf2_rate_km_per_h",
+    type=NUMBER,
+    help="How fast hmF2 changes [km/h].",
+)
+@click.option("--changes", is_flag=True, help="Add the day's times of change (some seconds).")
 @output_options("text", "json", "csv")
 def command(
     transmitter: "Place",
     receiver: "Place",
     frequency: float,
     when: datetime | None,
+    changes: bool,
     form: str,
     output: Path | None,
     **known: Any,
@@ -49,7 +63,9 @@ def command(
     from magion.render.data import path_rows, to_csv, to_json
     from magion.render.text import path_text
 
-    answer = answer_path(transmitter, receiver, frequency, when, ionosphere_from(**known))
+    answer = answer_path(
+        transmitter, receiver, frequency, when, ionosphere_from(**known), with_changes=changes
+    )
     if form == "json":
         text = to_json(answer)
     elif form == "csv":

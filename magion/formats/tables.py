@@ -25,8 +25,26 @@ def printable(text: str) -> str:
     str
         The same, safe to print, shortened to 80 signs.
     """
-    safe = "".join(c if c.isprintable() else c.encode("unicode_escape").decode() for c in text)
+    start = text[:81]
+    safe = "".join(c if c.isprintable() else c.encode("unicode_escape").decode() for c in start)
     return safe if len(safe) <= 80 else safe[:77] + "..."
+
+
+def printable_name(path: str | Path) -> str:
+    """Name of a file with its control characters escaped, for messages.
+
+    Parameters
+    ----------
+    path : str or Path
+        The file.
+
+    Returns
+    -------
+    str
+        Safe to print; of a long one, the last 80 signs, which hold the name.
+    """
+    safe = "".join(printable(c) for c in str(path))
+    return safe if len(safe) <= 80 else "..." + safe[-77:]
 
 
 def read_text(path: str | Path) -> str:
@@ -48,7 +66,7 @@ def read_text(path: str | Path) -> str:
         If it is missing, not a regular file, too large, or not UTF-8.
     """
     file = Path(path)
-    name = printable(str(path))
+    name = printable_name(path)
     try:
         if not file.exists():
             raise InputError(f"file {name} does not exist")
@@ -143,15 +161,21 @@ class Table:
         The rows.
     comments : tuple of str
         The lines that began with ``#``, without it.
+    header_line : int
+        Line of the header, counted from 1.
+    comment_lines : tuple of int
+        Line of each comment.
     """
 
     file: str
     columns: tuple[str, ...]
     rows: tuple[Row, ...]
     comments: tuple[str, ...]
+    header_line: int
+    comment_lines: tuple[int, ...]
 
 
-def read_table(path: str | Path, required: tuple[str, ...]) -> Table:
+def read_table(path: str | Path, required: tuple[str, ...], accepted: str = "") -> Table:
     """Read a CSV file with a header row.
 
     Parameters
@@ -160,6 +184,8 @@ def read_table(path: str | Path, required: tuple[str, ...]) -> Table:
         The file.
     required : tuple of str
         Columns that must be there.
+    accepted : str
+        The header as messages give it, if it is more than `required`.
 
     Returns
     -------
@@ -169,31 +195,50 @@ def read_table(path: str | Path, required: tuple[str, ...]) -> Table:
     Raises
     ------
     InputError
-        If the file cannot be read, is empty, lacks a column, or a row has
-        another number of cells than the header.
+        If the file cannot be read, is empty, lacks a column or has one twice,
+        or a row has another number of cells than the header.
     """
-    name = printable(str(path))
-    lines = read_text(path).splitlines()
-    comments = tuple(x.lstrip()[1:].strip() for x in lines if x.lstrip().startswith("#"))
-    kept = [(i, x) for i, x in enumerate(lines, 1) if x.strip() and not x.lstrip().startswith("#")]
-    wanted = ",".join(required)
+    name = printable_name(path)
+    # Not splitlines(): a line separator within a cell would shift every line number after it.
+    lines = list(enumerate(read_text(path).split("\n"), 1))
+    notes = [(i, x.strip()[1:].strip()) for i, x in lines if x.lstrip().startswith("#")]
+    kept = [(i, x) for i, x in lines if x.strip() and not x.lstrip().startswith("#")]
+    wanted = accepted or ",".join(required)
     if not kept:
         raise InputError(f"file {name} is empty; accepted: CSV with the header {wanted}")
-    try:
-        parsed = [next(csv.reader([text], strict=True)) for _, text in kept]
-    except csv.Error as error:
-        raise InputError(f"file {name} is not CSV: {error}") from None
-    columns = tuple(c.strip() for c in parsed[0])
+    parsed: list[tuple[int, list[str]]] = []
+    for line, text in kept:
+        try:
+            parsed.append((line, next(csv.reader([text], strict=True))))
+        except csv.Error as error:
+            raise InputError(f"file {name}, line {line} is not CSV: {error}") from None
+    header_line = parsed[0][0]
+    columns = tuple(c.strip() for c in parsed[0][1])
     for column in required:
         if column not in columns:
             raise InputError(
-                f"{name}, line {kept[0][0]}: column {column} is missing; accepted: {wanted}"
+                f"{name}, line {header_line}: column {column} is missing; accepted: {wanted}"
             )
+    seen: set[str] = set()
+    for column in filter(None, columns):
+        if column in seen:
+            raise InputError(
+                f"{name}, line {header_line}: column {printable(column)} stands twice; "
+                "accepted: each column once"
+            )
+        seen.add(column)
     rows = []
-    for (line, _), cells in zip(kept[1:], parsed[1:], strict=True):
+    for line, cells in parsed[1:]:
         if len(cells) != len(columns):
             raise InputError(
                 f"{name}, line {line}: {len(cells)} cells where the header has {len(columns)}"
             )
         rows.append(Row(file=name, line=line, cells=dict(zip(columns, cells, strict=True))))
-    return Table(file=name, columns=columns, rows=tuple(rows), comments=comments)
+    return Table(
+        file=name,
+        columns=columns,
+        rows=tuple(rows),
+        comments=tuple(text for _, text in notes),
+        header_line=header_line,
+        comment_lines=tuple(line for line, _ in notes),
+    )

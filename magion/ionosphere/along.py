@@ -208,7 +208,7 @@ def path_ionosphere(stations: Stations, hours: Sequence[LayerParameters]) -> Pat
     """
     rows = stations.angle.size
     cells = int((TOP - BASE) / _SPACING)
-    height = BASE + _SPACING * np.arange(-2, cells + 3)
+    height: FloatArray = BASE + _SPACING * np.arange(-2.0, cells + 3)
     parts = []
     for layers in hours:
         middle, right, left = layered_density(height, layers).reshape(3, rows, -1)
@@ -246,4 +246,3 @@ def _along_coefficients(rows: FloatArray) -> FloatArray:
     inner = rows - bend / 6.0
     first, last = 2.0 * inner[:1] - inner[1:2], 2.0 * inner[-1:] - inner[-2:-1]
     return np.concatenate([first, inner, last])
-

@@ -5,7 +5,6 @@ from numpy.typing import ArrayLike
 
 from magion.arrays import FloatArray
 
-
 _KNEE = 120e3
 
 

@@ -27,8 +27,9 @@ FloatOrArray: TypeAlias = float | FloatArray
 BASE: Final = 60e3
 """Lowest height of the profiles built here [m]."""
 
-TOP: Final = 600e3
-"""Greatest height of the profiles built here [m]."""
+TOP: Final = 640e3
+"""Greatest height of the profiles built here: the F2 peak may lie at 600 km, and
+rays are let go 26 km below the top [m]."""
 
 _FADE = 40e3
 _E_TOP_END = 90e3
@@ -205,7 +206,7 @@ def epstein(height: FloatArray, peak: ArrayLike, thickness: ArrayLike) -> FloatA
     ndarray
         The layer, 0 to 1 [1].
     """
-    z = np.clip((height - peak) / np.asarray(thickness), -600.0, 600.0)
+    z = np.clip((height - np.asarray(peak)) / np.asarray(thickness), -600.0, 600.0)
     return np.asarray(1.0 / np.cosh(0.5 * z) ** 2)
 
 

@@ -25,6 +25,7 @@ from magion.ionosphere.layers import (
 SPACING: Final = 250.0
 """Distance of the spline's nodes [m]."""
 
+_ROOM = 40e3
 _LEAST_E = 1.24e8  # density of 0.1 MHz, the least foE there is [m⁻³]
 
 _TO_POLYNOMIAL = (
@@ -204,7 +205,7 @@ def tabulated(
 
 
 def profiles_of_layers(layers: Sequence[LayerParameters]) -> VerticalProfiles:
-    """Profiles of layer parameters, 60 to 600 km.
+    """Profiles of layer parameters, 60 to 640 km.
 
     Parameters
     ----------
@@ -251,11 +252,12 @@ def measured_profile(height: FloatArray, electron_density: FloatArray) -> Vertic
         return np.where((h < low) | (h > high), 0.0, between)
 
     # Rays need an edge without a step: a row that is not zero falls to zero over two cells.
+    # Above there is room for rays that turn close to the last row.
     edge = 2.0 * SPACING
     return tabulated(
         [rows],
         low - (edge if electron_density[0] > 0.0 else 0.0),
-        high + (edge if electron_density[-1] > 0.0 else 0.0),
+        high + _ROOM,
         interpolate=False,
     )
 

@@ -34,8 +34,10 @@ DIRECTION_TOLERANCE = 1e-6
 
 _FIRST_STEP = 4e3
 _LONGEST_STEP = 25e3
+_TOP_ROOM = 26e3  # more than the longest step, so that none looks beyond the top
 _SHORTEST_STEP = 1e-3
 _ENERGY = 20.0
+_MOST_TURNS = 3
 _MOST_ROUNDS = 3000
 
 
@@ -49,7 +51,8 @@ class Fate(IntEnum):
     """It left through the top of the ionosphere."""
 
     LONG = 2
-    """It was still under way at the greatest group path."""
+    """It was still under way at the greatest group path, or is caught between
+    two layers: it has turned downward three times without coming out."""
 
     LOST = 3
     """Its step vanished: it touched the singular point X = 1 with the field along it."""
@@ -155,7 +158,7 @@ def trace(
     medium: Medium,
     field: MagneticField | None,
     *,
-    longest: float = 15_000e3,
+    longest: float = 7000e3,
     position_tolerance: float = POSITION_TOLERANCE,
     direction_tolerance: float = DIRECTION_TOLERANCE,
     keep_tracks: bool = False,
@@ -226,6 +229,7 @@ def _advance(
     active = np.arange(state.shape[1])
     step = np.full(active.size, _FIRST_STEP)
     previous = np.full(active.size, 1e-4)
+    turns = np.zeros(active.size, dtype=np.intp)
     slope, energy = derivative_and_hamiltonian(state, rays, medium, field)
     radius, climb = _radius_and_climb(state, slope)
     if keep_tracks:
@@ -260,17 +264,18 @@ def _advance(
         radius_before, climb_before = radius, climb
         radius, climb = _radius_and_climb(state, slope)
         _note_apogee(result, active, accepted, radius_before, radius, climb_before, climb, taken)
+        turns += accepted & (climb_before > 0.0) & (climb <= 0.0)
         if keep_tracks:
             notes.append(
                 (active[accepted], group[accepted], state[:, accepted], slope[:, accepted])
             )
         height = radius - EARTH_RADIUS
         landed = (height < medium.base) & (climb < 0.0)
-        escaped = (height > medium.top) & (climb > 0.0)
+        escaped = (height > medium.top - _TOP_ROOM) & (climb > 0.0)
         if landed.any():
             _land(result, active[landed], state[:, landed], group[landed])
         result.fate[active[escaped]] = Fate.ESCAPED
-        long = group > longest
+        long = (group > longest) | (turns >= _MOST_TURNS)
         result.fate[active[long & ~landed]] = Fate.LONG
         done = landed | escaped | long | (step < _SHORTEST_STEP)
         # The thin plasma near the base must not fall between the stages of one step.
@@ -287,7 +292,7 @@ def _advance(
             active, step, group = active[keep], step[keep], group[keep]
             state, slope, rays = state[:, keep], slope[:, keep], rays.take(keep)
             radius, climb, energy = radius[keep], climb[keep], energy[keep]
-            previous = previous[keep]
+            previous, turns = previous[keep], turns[keep]
 
 
 def _radius_and_climb(state: FloatArray, slope: FloatArray) -> tuple[FloatArray, FloatArray]:

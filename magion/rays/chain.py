@@ -166,6 +166,7 @@ def chain(
     field: MagneticField | None,
     *,
     tolerance: float = 1.0,
+    longest: float = 7000e3,
     keep_tracks: bool = False,
 ) -> Chain:
     """Trace rays of one or several hops.
@@ -180,6 +181,8 @@ def chain(
         As for :func:`magion.rays.batch.trace`.
     tolerance : float
         Error of position accepted in one step; that of p is 1e-6 of it a metre [m].
+    longest : float
+        Group path of one hop after which a ray is given up [m].
     keep_tracks : bool
         Whether to keep the nodes.
 
@@ -202,7 +205,7 @@ def chain(
     index = np.arange(count)
     for hop in range(most):
         rays = specs.hop(hop, index)
-        ends = one_hop(start, direction, rays, medium, field, tolerance, keep_tracks)
+        ends = one_hop(start, direction, rays, medium, field, tolerance, longest, keep_tracks)
         result.fate[index] = ends.fate
         result.position[:, index] = ends.position
         result.direction[:, index] = ends.direction
@@ -253,6 +256,7 @@ def one_hop(
     medium: Medium,
     field: MagneticField | None,
     tolerance: float,
+    longest: float,
     keep_tracks: bool,
 ) -> Landing:
     """Trace one hop; rays at the spitze take their limit from half a degree beside.
@@ -263,7 +267,7 @@ def one_hop(
         Positions on the ground [m] and unit directions [1].
     rays : RaySet
         Frequency, wave and ionosphere.
-    medium, field, tolerance, keep_tracks
+    medium, field, tolerance, longest, keep_tracks
         As for :func:`chain`.
 
     Returns
@@ -285,6 +289,7 @@ def one_hop(
             chosen,
             medium,
             field,
+            longest=longest,
             position_tolerance=tolerance,
             direction_tolerance=1e-6 * tolerance,
             keep_tracks=keep_tracks,

@@ -14,7 +14,7 @@ from magion.arrays import ComplexArray, FloatArray, dot, norm
 from magion.constants import EARTH_RADIUS
 from magion.field import MagneticField, flux_density
 from magion.geometry import from_cartesian
-from magion.ionosphere.collisions import electron_neutral
+from magion.ionosphere.collisions import collision_frequency
 from magion.ionosphere.medium import Medium
 from magion.rays.batch import Track
 from magion.waves import (
@@ -125,6 +125,31 @@ class RayPlasma:
             theta=float(between(self.theta)),
         )
 
+    def after(self, first: int) -> "RayPlasma":
+        """The part from one point on.
+
+        Parameters
+        ----------
+        first : int
+            Index of its first point [1].
+
+        Returns
+        -------
+        RayPlasma
+            That part, at least two points.
+        """
+        part = slice(min(first, self.X.size - 2), None)
+        return RayPlasma(
+            position=self.position[:, part],
+            wave_normal=self.wave_normal[:, part],
+            field=self.field[:, part],
+            X=self.X[part],
+            Y=self.Y[part],
+            Z=self.Z[part],
+            theta=self.theta[part],
+            length=self.length[part],
+        )
+
 
 def plasma_along(
     state: FloatArray, frequency: float, which: int, medium: Medium, field: MagneticField
@@ -161,7 +186,7 @@ def plasma_along(
         field=flux,
         X=plasma_ratio(density, frequency),
         Y=gyro_ratio(magnitude, frequency),
-        Z=collision_ratio(electron_neutral(height), frequency),
+        Z=collision_ratio(collision_frequency(height, density), frequency),
         theta=np.arccos(cosine),
         length=np.concatenate([[0.0], np.cumsum(steps)]),
     )
@@ -209,6 +234,38 @@ def plasma_at_apex(
     return plasma_along(state, frequency, which, medium, field).at(0.0)
 
 
+def exit_plasma(
+    track: Track,
+    frequency: float,
+    which: int,
+    medium: Medium,
+    field: MagneticField,
+    *,
+    upward: bool = False,
+) -> RayPlasma:
+    """The plasma from the highest point of a ray to where it leaves the ionosphere.
+
+    Parameters
+    ----------
+    track : Track
+        Nodes of the ray through the ionosphere.
+    frequency, which, medium, field
+        As for :func:`plasma_along`.
+    upward : bool
+        False for the way down; True for the way up, taken from the top [1].
+
+    Returns
+    -------
+    RayPlasma
+        Points 200 m of group path apart, ordered toward the exit.
+    """
+    top = apex(track)
+    end = float(track.group_path[0 if upward else -1])
+    count = max(int(abs(end - top) / _SPACING), 50)
+    state = track.sample(np.linspace(top, end, count + 1))
+    return plasma_along(state, frequency, which, medium, field)
+
+
 def limiting_polarization(
     track: Track,
     frequency: float,
@@ -237,11 +294,7 @@ def limiting_polarization(
         The plasma at the limiting height; its :meth:`~PlasmaPoint.waves` are
         the limiting polarizations.
     """
-    top = apex(track)
-    end = float(track.group_path[0 if upward else -1])
-    count = max(int(abs(end - top) / _SPACING), 50)
-    state = track.sample(np.linspace(top, end, count + 1))
-    plasma = plasma_along(state, frequency, which, medium, field)
+    plasma = exit_plasma(track, frequency, which, medium, field, upward=upward)
     difference = index_difference(plasma.X, plasma.Y, plasma.Z, plasma.theta)
     # Near reflection the indices of the other wave are imaginary: no phase is counted there.
     difference = np.where(np.isfinite(difference), difference, 0.0)

@@ -32,6 +32,9 @@ LARGEST_MISS: Final = 100.0
 HOMED_TOLERANCE: Final = 4e-3
 """Error of position accepted in one step of a homed ray [m]."""
 
+FAN_TOLERANCE: Final = 5.0
+"""Error of position accepted in one step of a fan's ray [m]."""
+
 STEEPEST: Final = 4e6 * 180.0 / math.pi
 """Rays whose landing place moves faster than 4000 km a degree of elevation are
 left out: they graze the peak of a layer, and their power is spread so thin that
@@ -322,9 +325,16 @@ def shoot(
     Chain
         The ends of the rays.
     """
-    start = np.repeat(link.up[:, None] * EARTH_RADIUS, w.shape[1], axis=1)
     return chain(
-        start, link.launch(w), specs, medium, field, tolerance=tolerance, keep_tracks=keep_tracks
+        np.repeat(link.up[:, None] * EARTH_RADIUS, w.shape[1], axis=1),
+        link.launch(w),
+        specs,
+        medium,
+        field,
+        tolerance=tolerance,
+        # rays caught between two layers run on for long without coming down
+        longest=min(2500e3 + 1.5 * link.distance, 7000e3),
+        keep_tracks=keep_tracks,
     )
 
 
@@ -336,6 +346,7 @@ def fans(
     zenith_angles: FloatArray | None = None,
     *,
     refinements: int = 2,
+    tolerance: float = FAN_TOLERANCE,
 ) -> list[Fan]:
     """Fans of rays in the plane of the great circle, finer where a layer gives out.
 
@@ -350,7 +361,9 @@ def fans(
     zenith_angles : ndarray, optional
         Launch angles [rad].
     refinements : int
-        How often the gaps at which a layer gives out are divided by seven.
+        How often the gaps at which a layer gives out are divided by seven [1].
+    tolerance : float
+        Error of position accepted in one step [m].
 
     Returns
     -------
@@ -364,7 +377,8 @@ def fans(
     for round_ in range(refinements + 1):
         index = np.repeat(np.arange(count), [a.size for a in wanted])
         if index.size:
-            new = _fan_rays(link, np.concatenate(wanted), index, specs, medium, field)
+            angle = np.concatenate(wanted)
+            new = _fan_rays(link, angle, index, specs, medium, field, tolerance)
             found = new if round_ == 0 else [f.merged(n) for f, n in zip(found, new, strict=True)]
         wanted = [_gaps(fan) for fan in found]
     return found
@@ -377,9 +391,10 @@ def _fan_rays(
     specs: Specs,
     medium: Medium,
     field: MagneticField | None,
+    tolerance: float,
 ) -> list[Fan]:
     w = np.stack([angle, np.zeros_like(angle)])
-    ends = shoot(link, w, specs.take(index), medium, field)
+    ends = shoot(link, w, specs.take(index), medium, field, tolerance=tolerance)
     along, across = link.coordinates(ends.position)
     # A ray that runs backward round the Earth is one that ran forward beyond half-way.
     along = np.where((along < -5000e3) & (angle > 0.0), along + 2.0 * np.pi * EARTH_RADIUS, along)

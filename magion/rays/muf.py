@@ -6,26 +6,30 @@ receiver. The MUF is the frequency at which that distance is the path's. All
 frequencies, waves and hours share one batch; the bracket is narrowed twice.
 """
 
+from dataclasses import dataclass
 from typing import Final
 
 import numpy as np
 
-from magion.arrays import FloatArray, IntArray
+from magion.arrays import BoolArray, FloatArray, IntArray
 from magion.constants import EARTH_RADIUS
 from magion.field import MagneticField
 from magion.ionosphere.medium import Medium
 from magion.rays.chain import Specs
 from magion.rays.homing import Fan, Link, fans
-from magion.waves import Mode
 
 LONGEST_HOP: Final = 3900e3
 """Greatest length of one hop that is tried [m]."""
 
+F_REGION: Final = 130e3
+"""Height above which a ray counts as turned back by the F region [m]."""
+
 _RAYS = 18
 _FIRST = 10
 _NEXT = 6
-_ROUNDS = 2
+_ROUNDS, _ROUNDS_NEAR = 2, 3
 _SLACK = 0.5e3
+_TOLERANCE = 30.0
 
 
 def elevation_of_hop(length: float, height: float) -> float:
@@ -48,8 +52,25 @@ def elevation_of_hop(length: float, height: float) -> float:
     return float(np.arctan2(np.cos(half) - ratio, np.sin(half)))
 
 
-def least_distances(fan: Fan) -> list[tuple[float, float]]:
-    """Least and greatest distance of every branch of a fan ahead of the zenith.
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Branch:
+    """A run of rays of a fan that one layer turns back.
+
+    Parameters
+    ----------
+    least, greatest : float
+        Least and greatest distance at which they come down, ahead positive [m].
+    apogee : float
+        Height at which the ray of the least distance turns [m].
+    """
+
+    least: float
+    greatest: float
+    apogee: float
+
+
+def branches(fan: Fan) -> list[Branch]:
+    """The branches of a fan.
 
     Parameters
     ----------
@@ -58,28 +79,32 @@ def least_distances(fan: Fan) -> list[tuple[float, float]]:
 
     Returns
     -------
-    list of (float, float)
-        Least distance, by the parabola through the lowest point and its
-        neighbours, and greatest distance, for each run of rays that one layer
-        turns back [m].
+    list of Branch
+        One for each run of neighbours without a break; the least distance by
+        the parabola through the lowest point and its neighbours.
     """
-    ahead = np.flatnonzero(fan.landed & (fan.zenith_angle >= -1e-9))
-    if ahead.size == 0:
+    landed = np.flatnonzero(fan.landed)
+    if landed.size == 0:
         return []
     breaks = fan.breaks()
-    cuts = [i + 1 for i, (a, b) in enumerate(zip(ahead, ahead[1:], strict=False))
-            if b != a + 1 or breaks[a]]  # fmt: skip
+    cuts = np.flatnonzero((np.diff(landed) != 1) | breaks[landed[:-1]]) + 1
     found = []
-    for run in np.split(ahead, cuts):
+    for run in np.split(landed, cuts):
         along = fan.along[run]
         i = int(np.argmin(along))
         least = float(along[i])
         if 0 < i < run.size - 1:
-            psi = fan.zenith_angle[run[i - 1 : i + 2]]
-            curve = np.polyfit(psi - psi[1], along[i - 1 : i + 2], 2)
-            if curve[0] > 0.0:
-                least = min(least, float(curve[2] - curve[1] ** 2 / (4.0 * curve[0])))
-        found.append((least, float(along.max())))
+            # vertex of the parabola through three points
+            x0, x1, x2 = fan.zenith_angle[run[i - 1 : i + 2]]
+            y0, y1, y2 = along[i - 1 : i + 2]
+            left, right = (y1 - y0) / (x1 - x0), (y2 - y1) / (x2 - x1)
+            bend = (right - left) / (x2 - x0)
+            if bend > 0.0:
+                slope = left + bend * (x1 - x0)  # at x1
+                least = min(least, float(y1 - slope * slope / (4.0 * bend)))
+        found.append(
+            Branch(least=least, greatest=float(along.max()), apogee=float(fan.apogee[run[i]]))
+        )
     return found
 
 
@@ -94,45 +119,63 @@ def skip_distance(fan: Fan) -> float | None:
     Returns
     -------
     float or None
-        Skip distance, 0 where the vertical ray is turned back; None where no
-        ray is [m].
+        Skip distance, 0 where a ray comes back to the transmitter; None where
+        no ray comes down [m].
     """
-    branches = least_distances(fan)
-    if not branches:
-        return None
-    if fan.landed[np.argmin(np.abs(fan.zenith_angle))]:
-        return 0.0
-    return max(0.0, min(least for least, _ in branches))
+    ahead = [b for b in branches(fan) if b.greatest > 0.0]
+    return max(0.0, min(b.least for b in ahead)) if ahead else None
 
 
-def _margin(fan: Fan, distance: float) -> float:
-    """How far inside its skip distance the receiver lies; -inf if out of reach [m]."""
-    margins = [
-        distance - least
-        for least, greatest in least_distances(fan)
-        if greatest >= distance - _SLACK
+def _margins_of(fan: Fan, distance: float) -> tuple[float, float]:
+    """How far inside the skip distance of any layer, and of F, the receiver lies.
+
+    -inf if it is out of reach [m].
+    """
+    inside = [
+        (distance - b.least, b.apogee) for b in branches(fan) if b.greatest >= distance - _SLACK
     ]
-    return max(margins, default=-np.inf)
+    return (
+        max((m for m, _ in inside), default=-np.inf),
+        max((m for m, apogee in inside if apogee > F_REGION), default=-np.inf),
+    )
 
 
 def _angles(link: Link, hops: int) -> FloatArray:
     length = link.distance / hops
     low = max(elevation_of_hop(length, 85e3) - np.radians(2.0), np.radians(0.4))
-    high = min(elevation_of_hop(length, 550e3) + np.radians(4.0), np.pi / 2.0)
-    low = min(low, high - np.radians(8.0))
+    high = elevation_of_hop(length, 550e3) + np.radians(4.0)
+    if length < 250e3:
+        high = np.pi / 2.0 + np.radians(8.0)  # a tilt may send the ray off backward
+    low = min(low, high - np.radians(10.0))
     return np.linspace(np.pi / 2.0 - high, np.pi / 2.0 - low, _RAYS)
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Mufs:
+    """Maximum usable frequencies.
+
+    Parameters
+    ----------
+    any_layer : ndarray, shape (n,)
+        By whatever layer; NaN where no frequency of the range arrives [Hz].
+    f_region : ndarray, shape (n,)
+        By the F region alone [Hz].
+    """
+
+    any_layer: FloatArray
+    f_region: FloatArray
 
 
 def maximum_usable_frequencies(
     link: Link,
     which: IntArray,
-    mode: Mode,
+    extraordinary: BoolArray,
     hops: int,
     guess: FloatArray,
     medium: Medium,
     field: MagneticField | None,
-) -> FloatArray:
-    """MUF of one wave and number of hops, for several ionospheres at once.
+) -> Mufs:
+    """MUF of waves over a number of hops, for several ionospheres at once.
 
     Parameters
     ----------
@@ -140,8 +183,8 @@ def maximum_usable_frequencies(
         The path.
     which : ndarray of int, shape (n,)
         Indices of the ionospheres within the medium [1].
-    mode : Mode
-        The wave, the same on every hop.
+    extraordinary : ndarray of bool, shape (n,)
+        Which wave, the same on every hop [1].
     hops : int
         Number of hops [1].
     guess : ndarray, shape (n,)
@@ -151,63 +194,83 @@ def maximum_usable_frequencies(
 
     Returns
     -------
-    ndarray, shape (n,)
-        MUF; NaN where no frequency of the range arrives [Hz].
+    Mufs
+        Of every ionosphere and wave.
     """
     angles = _angles(link, hops)
-    share = np.geomspace(0.55, 1.65, _FIRST)
-    trial = guess[:, None] * share
-    low, high = np.full(guess.size, np.nan), np.full(guess.size, np.nan)
-    low_margin, high_margin = np.full(guess.size, np.nan), np.full(guess.size, -np.inf)
-    for _ in range(_ROUNDS + 1):
-        margins = _margins(link, which, mode, hops, trial, angles, medium, field)
-        for i in range(guess.size):
-            if not np.isfinite(trial[i]).all():
-                continue
-            ladder = [(low[i], low_margin[i]), *zip(trial[i], margins[i], strict=True)]
-            ladder.append((high[i], high_margin[i]))
-            ladder = [(f, m) for f, m in ladder if np.isfinite(f)]
-            inside = [k for k, (_, m) in enumerate(ladder) if m >= -_SLACK]
-            if not inside:
+    count = guess.size
+
+    def margins(trial: FloatArray) -> FloatArray:
+        """Margins of trial frequencies (n, k): shape (2, n, k), any layer and F."""
+        out = np.full((2, *trial.shape), -np.inf)
+        good = np.isfinite(trial)
+        total = int(good.sum())
+        if total:
+            owner = np.repeat(np.arange(count), trial.shape[1])[good.ravel()]
+            specs = Specs(
+                frequency=trial[good],
+                which=which[owner],
+                hops=np.full(total, hops, dtype=np.intp),
+                extraordinary=np.repeat(extraordinary[owner][None], hops, axis=0),
+            )
+            found = fans(link, specs, medium, field, angles, refinements=0, tolerance=_TOLERANCE)
+            out[:, good] = np.array([_margins_of(fan, link.distance) for fan in found]).T
+        return out
+
+    brackets = [_Bracket(count), _Bracket(count)]
+    trial = guess[:, None] * np.geomspace(0.55, 1.65, _FIRST)
+    both = margins(trial)
+    for bracket, values in zip(brackets, both, strict=True):
+        bracket.narrow(trial, values)
+    rounds = _ROUNDS_NEAR if link.distance < 300e3 * hops else _ROUNDS
+    for _ in range(rounds):
+        trials = [b.inner(_NEXT) for b in brackets]
+        # Where F alone decides, both brackets are one and are traced once.
+        same = (brackets[0].low == brackets[1].low) & (brackets[0].high == brackets[1].high)
+        trials[1] = np.where(same[:, None], np.nan, trials[1])
+        found = margins(np.concatenate(trials, axis=1))
+        first, second = found[0, :, :_NEXT], found[1, :, _NEXT:]
+        second = np.where(same[:, None], found[1, :, :_NEXT], second)
+        brackets[0].narrow(trials[0], first)
+        brackets[1].narrow(np.where(same[:, None], trials[0], trials[1]), second)
+    return Mufs(any_layer=brackets[0].value(), f_region=brackets[1].value())
+
+
+class _Bracket:
+    """Highest frequency found to arrive, and the next one, which does not."""
+
+    def __init__(self, count: int) -> None:
+        self.low = np.full(count, np.nan)
+        self.high = np.full(count, np.nan)
+        self.low_margin = np.full(count, np.nan)
+        self.high_margin = np.full(count, -np.inf)
+
+    def inner(self, tries: int) -> FloatArray:
+        """Trial frequencies within the brackets, shape (n, tries)."""
+        steps = np.arange(1, tries + 1) / (tries + 1)
+        return np.asarray(self.low[:, None] + (self.high - self.low)[:, None] * steps)
+
+    def narrow(self, trial: FloatArray, margins: FloatArray) -> None:
+        """Take in what was traced at trial frequencies (n, tries)."""
+        ladder = np.concatenate([self.low[:, None], trial, self.high[:, None]], axis=1)
+        found = np.concatenate([self.low_margin[:, None], margins, self.high_margin[:, None]], 1)
+        for i in range(self.low.size):
+            known = np.flatnonzero(np.isfinite(ladder[i]))
+            inside = known[found[i, known] >= -_SLACK]
+            if inside.size == 0:
                 continue
             k = inside[-1]
-            low[i], low_margin[i] = ladder[k]
-            if k + 1 < len(ladder):
-                high[i], high_margin[i] = ladder[k + 1]
-        steps = np.arange(1, _NEXT + 1) / (_NEXT + 1)
-        trial = low[:, None] + (high - low)[:, None] * steps
-    # Within the last bracket the margin is close to linear, where both ends have one.
-    share_of_bracket = np.where(
-        np.isfinite(high_margin) & (low_margin > 0.0),
-        low_margin / np.maximum(low_margin - high_margin, 1e-9),
-        0.5,
-    )
-    share_of_bracket = np.where(low_margin <= _SLACK, 0.5, share_of_bracket)
-    return np.asarray(np.where(np.isfinite(high), low + (high - low) * share_of_bracket, low))
+            self.low[i], self.low_margin[i] = ladder[i, k], found[i, k]
+            above = known[known > k]
+            if above.size:
+                self.high[i], self.high_margin[i] = ladder[i, above[0]], found[i, above[0]]
 
-
-def _margins(
-    link: Link,
-    which: IntArray,
-    mode: Mode,
-    hops: int,
-    trial: FloatArray,
-    angles: FloatArray,
-    medium: Medium,
-    field: MagneticField | None,
-) -> FloatArray:
-    count, tries = trial.shape
-    frequency = trial.ravel()
-    good = np.isfinite(frequency)
-    out = np.full(frequency.size, -np.inf)
-    if good.any():
-        n = int(good.sum())
-        specs = Specs(
-            frequency=frequency[good],
-            which=np.repeat(which, tries)[good],
-            hops=np.full(n, hops, dtype=np.intp),
-            extraordinary=np.full((hops, n), mode is Mode.EXTRAORDINARY),
-        )
-        found = fans(link, specs, medium, field, angles, refinements=0)
-        out[good] = [_margin(fan, link.distance) for fan in found]
-    return out.reshape(count, tries)
+    def value(self) -> FloatArray:
+        """Where the margin vanishes, within the last bracket."""
+        with np.errstate(invalid="ignore", divide="ignore"):
+            share = self.low_margin / (self.low_margin - self.high_margin)
+        # Linear where both ends have a margin of like size; else the middle.
+        like = (share > 0.02) & (share < 0.98)
+        share = np.where(like, share, 0.5)
+        middle = self.low + (self.high - self.low) * share
+        return np.asarray(np.where(np.isfinite(self.high), middle, self.low))

@@ -60,7 +60,7 @@ def rows():
     def single(scale):
         begin, worst = time.perf_counter(), 0.0
         for i in some:
-            landed = _one(start, directions[:, i], rays.take(np.array([i])), magnetic, scale)
+            landed = _one(start, directions[:, i], rays.hop(0, np.array([i])), magnetic, scale)
             worst = max(worst, float(np.linalg.norm(landed - reference[:, i])))
         return (time.perf_counter() - begin) / some.size * 200, worst
 

@@ -8,7 +8,7 @@ from magion.field import fit_field
 from magion.geometry import parse_place
 from magion.ionosphere.layers import LayerParameters
 from magion.ionosphere.profile import profiles_of_layers
-from magion.rays.equations import RaySet
+from magion.rays.chain import Specs
 from magion.rays.homing import link_between
 
 WHEN = datetime(2026, 6, 21, 12, tzinfo=UTC)
@@ -41,9 +41,10 @@ def fan(count, frequency=5.3e6):
     """Launch directions and ray set of `count` elevations for both waves."""
     psi = np.radians(np.linspace(2.0, 85.0, count))
     w = np.stack([np.concatenate([psi, psi]), np.zeros(2 * count)])
-    rays = RaySet(
+    rays = Specs(
         frequency=np.full(2 * count, frequency),
-        extraordinary=np.arange(2 * count) >= count,
         which=np.zeros(2 * count, dtype=np.intp),
+        hops=np.ones(2 * count, dtype=np.intp),
+        extraordinary=(np.arange(2 * count) >= count)[None],
     )
     return w, rays

@@ -20,10 +20,11 @@ from magion.constants import (
 from magion.geometry import Place, to_cartesian
 from magion.ionosphere.layers import LayerParameters
 from magion.ionosphere.profile import profiles_of_layers
-from magion.rays.batch import Fate
-from magion.rays.equations import RaySet, derivative_and_hamiltonian
+from magion.rays.batch import Fate, trace
+from magion.rays.chain import Specs, specs_of
+from magion.rays.equations import derivative_and_hamiltonian
 from magion.rays.homing import LARGEST_MISS, home, link_between, shoot
-from magion.waves import refractive_index_squared
+from magion.waves import MODES, refractive_index_squared
 from tests.media import AxialDipole, Scaled
 
 LAYERS = LayerParameters(
@@ -48,10 +49,11 @@ TIGHT = 4e-3
 
 def rays(frequency_mhz, extraordinary):
     frequency = np.asarray(frequency_mhz, dtype=float) * 1e6
-    return RaySet(
+    return Specs(
         frequency=frequency,
-        extraordinary=np.broadcast_to(extraordinary, frequency.shape).copy(),
         which=np.zeros(frequency.size, dtype=int),
+        hops=np.ones(frequency.size, dtype=int),
+        extraordinary=np.broadcast_to(extraordinary, frequency.shape).copy()[None],
     )
 
 
@@ -71,8 +73,8 @@ def test_hamiltonian_stays_zero_along_every_ray(extraordinary):
     batch = rays(np.full(75, 5.3), extraordinary)
     ends = shoot(link, w, batch, MEDIUM, DIPOLE, tolerance=TIGHT, keep_tracks=True)
     assert (ends.fate == Fate.LANDED).all()
-    for i, track in enumerate(ends.tracks):
-        same = batch.take(np.full(track.group_path.size, i))
+    for i, track in enumerate(ends.landings[0].tracks):
+        same = batch.hop(0, np.full(track.group_path.size, i))
         _, energy = derivative_and_hamiltonian(track.state, same, MEDIUM, DIPOLE)
         assert np.abs(energy).max() <= 1e-6
 
@@ -168,8 +170,34 @@ def test_ordinary_ray_near_the_vertical_keeps_its_name():
     X = PLASMA_FREQUENCY_SQUARED_PER_DENSITY * density / 5.3e6**2
     full = height[np.searchsorted(X, 1.0)]
     assert (ends.fate == Fate.LANDED).all()
-    assert np.all(ends.apogee < full + 50.0)
-    assert np.all(ends.apogee > full - 1500.0)
+    assert np.all(ends.apogees[0] < full + 50.0)
+    assert np.all(ends.apogees[0] > full - 1500.0)
+
+
+def test_two_hops_are_one_after_the_other():
+    """The second hop of a chain is the ray launched from where the first came down,
+    in the direction reflected there (kind: derived)."""
+    link = link_to(51.0, 4.0)
+    w = fan(link, [20.0, 40.0], 1.0)
+    for sequence in ((MODES[0], MODES[1]), (MODES[1], MODES[1])):
+        specs = specs_of([(5.3e6, 0, sequence)] * 2)
+        whole = shoot(link, w, specs, MEDIUM, DIPOLE, tolerance=TIGHT)
+        first = shoot(link, w, rays([5.3] * 2, sequence[0] is MODES[1]), MEDIUM, DIPOLE,
+                      tolerance=TIGHT)  # fmt: skip
+        up = first.position / norm(first.position)
+        toward = first.direction / norm(first.direction)
+        toward = toward - 2.0 * (toward * up).sum(axis=0) * up
+        again = trace(
+            first.position,
+            toward,
+            rays([5.3] * 2, sequence[1] is MODES[1]).hop(0, np.arange(2)),
+            MEDIUM,
+            DIPOLE,
+            position_tolerance=TIGHT,
+            direction_tolerance=1e-6 * TIGHT,
+        )
+        assert norm(whole.position - again.position).max() < 1.0
+        assert np.allclose(whole.group_path, first.group_path + again.group_path, atol=1.0)
 
 
 def _one_ray(position, direction, frequency, extraordinary):

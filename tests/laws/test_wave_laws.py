@@ -29,13 +29,13 @@ from magion.polarization import (
     match,
     stokes,
     tilt,
-    wave_axes,
 )
 from magion.waves import (
     polarization_ratio,
     polarization_vectors,
     refractive_index,
     refractive_index_squared,
+    wave_axes,
 )
 
 NUMBER = 4000

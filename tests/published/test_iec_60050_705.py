@@ -15,11 +15,12 @@ import numpy as np
 import pytest
 
 from magion.arrays import cross, dot, norm
-from magion.polarization import Hand, axial_ratio, hand_of, major_axis_bearing, wave_axes
+from magion.polarization import Hand, axial_ratio, hand_of, major_axis_bearing
 from magion.waves import (
     extraordinary_critical_frequency,
     polarization_vectors,
     refractive_index_squared,
+    wave_axes,
 )
 
 EAST, NORTH, UP = np.eye(3)

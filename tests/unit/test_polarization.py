@@ -19,8 +19,8 @@ from magion.polarization import (
     shape_of,
     stokes,
     tilt,
-    wave_axes,
 )
+from magion.waves import wave_axes
 
 X_AXIS, Y_AXIS = np.array([1.0 + 0j, 0]), np.array([0, 1.0 + 0j])
 # exp(+i omega t): a component with −i lags by a quarter period.
