@@ -769,7 +769,8 @@ def _changes_of_day(
     midnight = moment.replace(hour=0, minute=0, second=0, microsecond=0)
     moments = [midnight + timedelta(minutes=30 * i) for i in range(48)]
     if given.readings is not None:
-        moments = [m for m in moments if given.readings.covers(m)]
+        covered = given.readings.covered
+        moments = [m for m in moments if any(a <= m <= b for a, b in covered)]
     if len(moments) < 2 or given.profile is not None:
         return ()
     scene = scene_of(link, moments, given)

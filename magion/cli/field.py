@@ -30,14 +30,14 @@ def command(
     """  # noqa: D301
     from magion.answers.point import answer_field
     from magion.cli.writing import write
-    from magion.render.data import dotted, plain, to_csv, to_json
+    from magion.render.data import dotted_record, to_csv, to_json
     from magion.render.text import field_text
 
     answer = answer_field(place, when or datetime.now(UTC), height_km=height)
     if form == "json":
         text = to_json(answer)
     elif form == "csv":
-        text = to_csv([dotted(plain(answer))])
+        text = to_csv([dotted_record(answer)])
     else:
         text = field_text(answer)
     write(text, output)

@@ -37,7 +37,7 @@ def command(
     """  # noqa: D301
     from magion.answers.point import answer_wave
     from magion.cli.writing import write
-    from magion.render.data import dotted, plain, to_csv, to_json
+    from magion.render.data import dotted_record, to_csv, to_json
     from magion.render.text import wave_text
 
     answer = answer_wave(
@@ -50,7 +50,7 @@ def command(
     if form == "json":
         text = to_json(answer)
     elif form == "csv":
-        text = to_csv([dotted(plain(answer))])
+        text = to_csv([dotted_record(answer)])
     else:
         text = wave_text(answer)
     write(text, output)

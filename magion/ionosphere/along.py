@@ -103,14 +103,14 @@ class PathIonosphere:
     base, top : float
         Lowest and greatest height with plasma [m].
     axes : ndarray, shape (3, 3)
-        As in :class:`Stations`.
+        As in :class:`Stations` [1].
     first, spacing : float
         Central angle of the first row of stations, and between rows [rad].
     rows : int
         Number of rows [1].
     table : ndarray, shape (8, hours * (rows + 2) * cells)
         Spline coefficients along the path of the height polynomials of N
-        [m⁻³] and of its slope across the path [m⁻³ per unit of the sine].
+        and of its slope across the path, per unit of the sine [m⁻³].
     cells : int
         Cells in height [1].
     """
@@ -150,14 +150,14 @@ class PathIonosphere:
         x = (radius - (EARTH_RADIUS + self.base)) * (1.0 / _SPACING)
         within = (x > 0.0) & (x < self.cells)
         x = np.minimum(np.maximum(x, 0.0), self.cells)
-        cell = np.minimum(x.astype(np.intp), self.cells - 1)
+        cell = np.maximum(np.minimum(x.astype(np.intp), self.cells - 1), 0)  # NaN has no cell
         h = x - cell
         # Along: which interval of stations; beyond the ends, the last station.
         last = self.rows - 1.0
         y = (np.arctan2(t, c) - self.first) * (1.0 / self.spacing)
         moving = (y > 0.0) & (y < last)
         y = np.minimum(np.maximum(y, 0.0), last)
-        row = np.minimum(y.astype(np.intp), self.rows - 2)
+        row = np.maximum(np.minimum(y.astype(np.intp), self.rows - 2), 0)
         u = y - row
         v = n / radius
         slanting = np.abs(v) < _WIDEST

@@ -14,7 +14,7 @@ exponential one of [WaitSpies1964]_.
 """
 
 from dataclasses import dataclass, fields, replace
-from typing import Final, TypeAlias
+from typing import Any, Final, TypeAlias
 
 import numpy as np
 from numpy.typing import ArrayLike
@@ -98,7 +98,7 @@ class LayerParameters:
         LayerParameters
             With plain numbers.
         """
-        values = {}
+        values: dict[str, Any] = {}
         for field in fields(self):
             value = getattr(self, field.name)
             values[field.name] = float(value[place]) if isinstance(value, np.ndarray) else value

@@ -73,7 +73,7 @@ class VerticalProfiles:
         """
         cells = self.polynomials.shape[1]
         x = np.minimum(np.maximum((height - self.base) * (1.0 / SPACING), 0.0), cells)
-        cell = np.minimum(x.astype(np.intp), cells - 1)
+        cell = np.maximum(np.minimum(x.astype(np.intp), cells - 1), 0)  # NaN has no cell
         t = x - cell
         rows = self.polynomials.reshape(-1, 4).take(cell + which * cells, axis=0)
         c0, c1, c2, c3 = rows.T
@@ -251,12 +251,12 @@ def measured_profile(height: FloatArray, electron_density: FloatArray) -> Vertic
         between = np.maximum(curve(np.clip(h, low, high)), 0.0)
         return np.where((h < low) | (h > high), 0.0, between)
 
-    # Rays need an edge without a step: a row that is not zero falls to zero over two cells.
+    # Rays need an edge without a step: below the first row the spline comes to zero in two cells.
     # Above there is room for rays that turn close to the last row.
     edge = 2.0 * SPACING
     return tabulated(
         [rows],
-        low - (edge if electron_density[0] > 0.0 else 0.0),
+        low - edge,
         high + _ROOM,
         interpolate=False,
     )

@@ -7,7 +7,9 @@ import json
 import math
 from collections.abc import Iterable
 from enum import Enum
-from typing import Any
+from typing import Any, get_args, get_origin, get_type_hints
+
+from magion.answers.path import PathAnswer, RayAnswer, WaveOnPath
 
 _FORMULA = ("=", "+", "-", "@", "\t", "\r")
 
@@ -53,31 +55,6 @@ def to_json(record: Any) -> str:
     return json.dumps(plain(record), indent=2, ensure_ascii=False, allow_nan=False) + "\n"
 
 
-def dotted(value: Any, prefix: str = "") -> dict[str, Any]:
-    """Nested dictionaries as one, the keys joined by dots.
-
-    Parameters
-    ----------
-    value : dict
-        What :func:`plain` returns of a record.
-    prefix : str
-        Key of the dictionary itself.
-
-    Returns
-    -------
-    dict
-        Dotted key to plain value; lists are left out.
-    """
-    flat: dict[str, Any] = {}
-    for key, inner in value.items():
-        name = f"{prefix}.{key}" if prefix else key
-        if isinstance(inner, dict):
-            flat.update(dotted(inner, name))
-        elif not isinstance(inner, list):
-            flat[name] = inner
-    return flat
-
-
 def _cell(value: Any) -> str:
     if value is None:
         return ""
@@ -111,12 +88,46 @@ def to_csv(rows: Iterable[dict[str, Any]]) -> str:
     return out.getvalue()
 
 
-def path_rows(record: Any) -> list[dict[str, Any]]:
+def dotted_record(record: Any) -> dict[str, Any]:
+    """A record as one dictionary of dotted keys, the same keys whatever is null in it.
+
+    Parameters
+    ----------
+    record : record
+        A frozen record.
+
+    Returns
+    -------
+    dict
+        Dotted key to plain value; a part that is null gives all its keys with
+        None; lists are left out.
+    """
+    return _walk(type(record), record, "")
+
+
+def _walk(kind: type, value: Any, prefix: str) -> dict[str, Any]:
+    flat: dict[str, Any] = {}
+    hints = get_type_hints(kind)
+    for field in dataclasses.fields(kind):
+        name = f"{prefix}.{field.name}" if prefix else field.name
+        inner = None if value is None else getattr(value, field.name)
+        choices = [hints[field.name], *get_args(hints[field.name])]
+        parts = [c for c in choices if dataclasses.is_dataclass(c) and isinstance(c, type)]
+        if any(get_origin(c) is tuple for c in choices):
+            continue
+        if parts:
+            flat |= _walk(parts[0], inner, name)
+        else:
+            flat[name] = plain(inner)
+    return flat
+
+
+def path_rows(answer: PathAnswer) -> list[dict[str, Any]]:
     """Rows of a path's CSV: one a ray, the leading ray of each wave first.
 
     Parameters
     ----------
-    record : PathAnswer
+    answer : PathAnswer
         The answer.
 
     Returns
@@ -124,22 +135,10 @@ def path_rows(record: Any) -> list[dict[str, Any]]:
     list of dict
         Dotted keys of the answer and of the ray.
     """
-    answer = plain(record)
-    waves = answer.pop("waves")
-    common = dotted(answer)
-    nested = ("launch", "arrival", "index", "limiting")
-    full: dict[str, dict[str, Any]] = {}
-    for wave in waves:  # columns of a part that one wave lacks are taken from the other
-        for part in nested:
-            for ray in [wave, *wave["rays"]]:
-                if ray[part]:
-                    full.setdefault(part, dict.fromkeys(ray[part]))
+    common = dotted_record(answer)
     rows = []
-    for wave in waves:
-        for ray in [wave, *wave["rays"]]:
-            filled = {
-                key: (full.get(key) if key in nested and value is None else value)
-                for key, value in ray.items()
-            }
-            rows.append(common | dotted({k: v for k, v in filled.items() if k != "rays"}))
+    for wave in answer.waves:
+        rows.append(common | _walk(WaveOnPath, wave, ""))
+        for ray in wave.rays:
+            rows.append(common | _walk(RayAnswer, ray, "") | {"muf_mhz": wave.muf_mhz})
     return rows

@@ -112,6 +112,8 @@ def path_text(answer: PathAnswer) -> str:
     lines.append(f"  {way}; {answer.frequency_mhz:.3f} MHz; {_time(answer.time_utc)}")
     lines += ["", _pair("", [w.wave.value for w in answer.waves])]
     lines += _wave_rows(answer)
+    lines += ["", "How sure"]
+    lines += _how_sure(answer)
     lines += ["", "Why"]
     lines += _why(answer)
     if answer.advice.caveats:
@@ -169,7 +171,10 @@ def _wave_rows(answer: PathAnswer) -> list[str]:
     rows += row("highest at", lambda w: fixed(w.apogee_km, ".0f", " km"))
     rows += row("absorption", lambda w: fixed(w.absorption_db, ".1f", " dB"))
     rows += row("level", lambda w: fixed(w.level_db, "+.1f", " dB"))
+    rows += row("feeds the other wave", lambda w: fixed(w.other_wave_db, ".0f", " dB"))
+    rows += row("Doppler shift", lambda w: fixed(w.doppler_hz, "+.3f", " Hz"))
     rows += row("MUF", lambda w: fixed(w.muf_mhz, ".2f", " MHz"))
+    rows += row("  margin to it", lambda w: fixed(w.margin_mhz, "+.2f", " MHz"))
     rows += row("skip distance", lambda w: fixed(w.skip_km, ".0f", " km"))
     rows += row("other rays", lambda w: _others(w.rays))
     return rows
@@ -189,6 +194,49 @@ def _shape(wave: WaveOnPath) -> str | None:
 def _others(rays: tuple[RayAnswer, ...]) -> str | None:
     cells = [f"{r.label} {r.arrival.elevation_deg:.0f}°" for r in rays if r.arrival]
     return ", ".join(cells[:2]) + (", …" if len(cells) > 2 else "") if cells else None
+
+
+_STATES = {
+    "both": "both waves",
+    "ordinary_only": "only the ordinary",
+    "extraordinary_only": "only the extraordinary",
+    "none": "neither wave",
+}
+
+
+def _how_sure(answer: PathAnswer) -> list[str]:
+    advice, sky = answer.advice, answer.ionosphere
+    lines: list[str] = []
+    chances = advice.state_probabilities
+    if chances is None or sky.fof2_error_mhz is None:
+        lines += _wrapped(f"Now: {_STATES[advice.state]}. The uncertainty of foF2 is not known.")
+    else:
+        word = "cannot tell" if advice.confidence == "cannot_tell" else advice.confidence
+        parts = [
+            f"{_STATES[name]} {100.0 * float(getattr(chances, name)):.0f} %"
+            for name in _STATES
+            if float(getattr(chances, name)) >= 0.005
+        ]
+        lines += _wrapped(
+            f"Now: {_STATES[advice.state]}; confidence: {word}. With foF2 {sky.fof2_mhz:.2f} ± "
+            f"{sky.fof2_error_mhz:.2f} MHz: {', '.join(parts)}."
+        )
+    if advice.fading is not None:
+        split = advice.fading.doppler_split_hz
+        period = advice.fading.period_s
+        beat = "no beat" if period is None else f"a fade every {period:.0f} s"
+        lines += _wrapped(f"At the stated rates the two waves are {split:+.3f} Hz apart: {beat}.")
+    if advice.changes is not None:
+        if not advice.changes:
+            lines += _wrapped("No wave comes or goes on this day.")
+        for change in advice.changes:
+            doubt = "" if change.plus_minus_min is None else f" ± {change.plus_minus_min:.0f} min"
+            verb = "comes" if change.comes else "goes"
+            lines.append(
+                f"  {change.time_utc[11:16]} UTC{doubt:<10}  the {change.wave} wave {verb}: "
+                f"{_STATES[change.state]}"
+            )
+    return lines
 
 
 def _why(answer: PathAnswer) -> list[str]:

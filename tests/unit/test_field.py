@@ -233,7 +233,7 @@ def test_gradient_of_the_fit_against_the_model(path_and_fit):
 def test_outside_its_box_the_fit_holds_the_nearest_value(path_and_fit):
     _, fit = path_and_fit
     middle = fit.axes[0]
-    top = (EARTH_RADIUS + 600e3) * middle[:, None]
+    top = (EARTH_RADIUS + fit.high[2]) * middle[:, None]
     above = (EARTH_RADIUS + 900e3) * middle[:, None]
     below = (EARTH_RADIUS - 5e3) * middle[:, None]
     ground = EARTH_RADIUS * middle[:, None]

@@ -1,6 +1,8 @@
 """Values with the letters of the URSI handbook (kind: memory)."""
 
 import math
+import re
+from pathlib import Path
 
 import pytest
 from hypothesis import given
@@ -84,6 +86,15 @@ def test_the_alphabet():
     assert "".join(DESCRIPTIVE) == "ABCDEFGHKLMNOPQRSTVWXYZ"
     assert set(ALONE_QUALIFYING) <= set(QUALIFYING)
     assert set(QUALIFYING) - set(DESCRIPTIVE) <= set(ALONE_QUALIFYING)
+
+
+def test_the_page_has_the_same_letters():
+    page = Path(__file__).parents[2] / "docs" / "formats.md"
+    found = re.findall(
+        r"^\| ([A-Z]) \|(.*)\|(.*)\|$", page.read_text(encoding="utf-8"), re.MULTILINE
+    )
+    assert {a: b.strip() for a, b, _ in found if b.strip()} == dict(QUALIFYING)
+    assert {a: c.strip() for a, _, c in found if c.strip()} == dict(DESCRIPTIVE)
 
 
 @given(st.floats(0.1, 30.0), st.sampled_from("-/ADEIJMOTUZ"), st.sampled_from(list(DESCRIPTIVE)))
