@@ -32,6 +32,9 @@ POSITION_TOLERANCE = 1.0
 DIRECTION_TOLERANCE = 1e-6
 """Error of p accepted in one step [1]."""
 
+COARSE = 10.0
+"""Position tolerance from which flat rays may take longer steps [m]."""
+
 _FIRST_STEP = 4e3
 _LONGEST_STEP = 25e3
 _TOP_ROOM = 26e3  # more than the longest step, so that none looks beyond the top
@@ -39,6 +42,7 @@ _SHORTEST_STEP = 1e-3
 _ENERGY = 20.0
 _MOST_TURNS = 3
 _MOST_ROUNDS = 3000
+_BLOCK = 1600
 
 
 class Fate(IntEnum):
@@ -204,16 +208,19 @@ def trace(
     )
     notes: list[tuple[IntArray, FloatArray, FloatArray, FloatArray]] = []
     with np.errstate(divide="ignore", invalid="ignore", over="ignore"):
-        _advance(
-            state, group, rays, medium, field, result, notes,
-            longest, position_tolerance, direction_tolerance, keep_tracks,
-        )  # fmt: skip
+        for first in range(0, count, _BLOCK):  # blocks that stay in the processor's cache
+            block = np.arange(first, min(first + _BLOCK, count))
+            _advance(
+                block, state[:, block], group[block], rays.take(block), medium, field, result,
+                notes, longest, position_tolerance, direction_tolerance, keep_tracks,
+            )  # fmt: skip
     if keep_tracks:
         result.tracks.extend(_assemble(notes, count))
     return result
 
 
 def _advance(
+    active: IntArray,
     state: FloatArray,
     group: FloatArray,
     rays: RaySet,
@@ -226,7 +233,6 @@ def _advance(
     direction_tolerance: float,
     keep_tracks: bool,
 ) -> None:
-    active = np.arange(state.shape[1])
     step = np.full(active.size, _FIRST_STEP)
     previous = np.full(active.size, 1e-4)
     turns = np.zeros(active.size, dtype=np.intp)
@@ -279,8 +285,10 @@ def _advance(
         result.fate[active[long & ~landed]] = Fate.LONG
         done = landed | escaped | long | (step < _SHORTEST_STEP)
         # The thin plasma near the base must not fall between the stages of one step.
-        thin = _FIRST_STEP + 0.4 * (height - medium.base)
-        step = np.minimum(step * factor, np.clip(thin, _FIRST_STEP, _LONGEST_STEP))
+        thin = np.clip(_FIRST_STEP + 0.4 * (height - medium.base), _FIRST_STEP, _LONGEST_STEP)
+        if position_tolerance >= COARSE:
+            thin = thin / np.maximum(np.abs(climb), 0.25)
+        step = np.minimum(step * factor, thin)
         if done.any():
             for target, source in (
                 (result.group_path, group),

@@ -24,10 +24,9 @@ LONGEST_HOP: Final = 3900e3
 F_REGION: Final = 130e3
 """Height above which a ray counts as turned back by the F region [m]."""
 
-_RAYS = 18
-_FIRST = 10
-_NEXT = 6
-_ROUNDS, _ROUNDS_NEAR = 2, 3
+_RAYS = 16
+_FIRST = (0.7, 0.85, 0.97, 1.08, 1.22, 1.45)
+_ROUNDS, _ROUNDS_NEAR = 2, 4
 _SLACK = 0.5e3
 _TOLERANCE = 30.0
 
@@ -218,20 +217,30 @@ def maximum_usable_frequencies(
         return out
 
     brackets = [_Bracket(count), _Bracket(count)]
-    trial = guess[:, None] * np.geomspace(0.55, 1.65, _FIRST)
-    both = margins(trial)
-    for bracket, values in zip(brackets, both, strict=True):
-        bracket.narrow(trial, values)
-    rounds = _ROUNDS_NEAR if link.distance < 300e3 * hops else _ROUNDS
-    for _ in range(rounds):
-        trials = [b.inner(_NEXT) for b in brackets]
+    near = link.distance < 300e3 * hops
+    trial = guess[:, None] * np.array(_FIRST)
+    for _ in range(3):
+        both = margins(trial)
+        for bracket, values in zip(brackets, both, strict=True):
+            bracket.narrow(trial, values)
+        # The guess was too high where nothing arrived, too low where everything did.
+        lower = np.isnan(brackets[0].low)[:, None]
+        higher = np.isnan(brackets[0].high)[:, None] & ~lower
+        if not (lower.any() or higher.any()):
+            break
+        step = np.where(lower, _FIRST[0] / _FIRST[-1], np.where(higher, 1.0, np.nan))
+        shift = _FIRST[-1] / _FIRST[0]
+        trial = trial * step * np.where(higher, shift, 1.0)
+    for _ in range(_ROUNDS_NEAR if near else _ROUNDS):
+        trials = [b.inner(near) for b in brackets]
         # Where F alone decides, both brackets are one and are traced once.
         same = (brackets[0].low == brackets[1].low) & (brackets[0].high == brackets[1].high)
+        same |= np.isnan(brackets[1].low)
         trials[1] = np.where(same[:, None], np.nan, trials[1])
+        width = trials[0].shape[1]
         found = margins(np.concatenate(trials, axis=1))
-        first, second = found[0, :, :_NEXT], found[1, :, _NEXT:]
-        second = np.where(same[:, None], found[1, :, :_NEXT], second)
-        brackets[0].narrow(trials[0], first)
+        second = np.where(same[:, None], found[1, :, :width], found[1, :, width:])
+        brackets[0].narrow(trials[0], found[0, :, :width])
         brackets[1].narrow(np.where(same[:, None], trials[0], trials[1]), second)
     return Mufs(any_layer=brackets[0].value(), f_region=brackets[1].value())
 
@@ -245,10 +254,25 @@ class _Bracket:
         self.low_margin = np.full(count, np.nan)
         self.high_margin = np.full(count, -np.inf)
 
-    def inner(self, tries: int) -> FloatArray:
-        """Trial frequencies within the brackets, shape (n, tries)."""
-        steps = np.arange(1, tries + 1) / (tries + 1)
-        return np.asarray(self.low[:, None] + (self.high - self.low)[:, None] * steps)
+    def inner(self, near: bool) -> FloatArray:
+        """Trial frequencies within the brackets, shape (n, 3).
+
+        Near the vertical the margin has a corner at the critical frequency and
+        the bracket is quartered; else it is close to linear, and the trials
+        stand around where it vanishes.
+        """
+        middle = self.value()
+        steps = np.array([0.25, 0.5, 0.75])
+        quarters = self.low[:, None] + (self.high - self.low)[:, None] * steps
+        if near:
+            return quarters
+        share = np.clip((middle - self.low) / (self.high - self.low), 0.0, 1.0)[:, None]
+        around = np.clip(
+            share + np.array([-0.08, 0.0, 0.08]), [0.02, 0.04, 0.06], [0.94, 0.96, 0.98]
+        )
+        around = self.low[:, None] + (self.high - self.low)[:, None] * around
+        known = np.isfinite(self.high_margin)[:, None]
+        return np.asarray(np.where(known, around, quarters))
 
     def narrow(self, trial: FloatArray, margins: FloatArray) -> None:
         """Take in what was traced at trial frequencies (n, tries)."""
@@ -256,14 +280,17 @@ class _Bracket:
         found = np.concatenate([self.low_margin[:, None], margins, self.high_margin[:, None]], 1)
         for i in range(self.low.size):
             known = np.flatnonzero(np.isfinite(ladder[i]))
-            inside = known[found[i, known] >= -_SLACK]
+            known = known[np.argsort(ladder[i, known], kind="stable")]
+            inside = np.flatnonzero(found[i, known] >= -_SLACK)
             if inside.size == 0:
+                if known.size:
+                    self.high[i], self.high_margin[i] = ladder[i, known[0]], found[i, known[0]]
                 continue
-            k = inside[-1]
-            self.low[i], self.low_margin[i] = ladder[i, k], found[i, k]
-            above = known[known > k]
-            if above.size:
-                self.high[i], self.high_margin[i] = ladder[i, above[0]], found[i, above[0]]
+            k = int(inside[-1])
+            self.low[i], self.low_margin[i] = ladder[i, known[k]], found[i, known[k]]
+            if k + 1 < known.size:
+                above = known[k + 1]
+                self.high[i], self.high_margin[i] = ladder[i, above], found[i, above]
 
     def value(self) -> FloatArray:
         """Where the margin vanishes, within the last bracket."""
