@@ -8,6 +8,8 @@ from magion.constants import EARTH_RADIUS, PLASMA_FREQUENCY_SQUARED_PER_DENSITY
 class QuasiParabolic:
     """The quasi-parabolic layer of Croft & Hoogasian (1968)."""
 
+    thin_layer = None
+
     def __init__(self, critical=10e6, peak=300e3, half_width=100e3, ground=6371.2e3):
         self.densest = critical**2 / PLASMA_FREQUENCY_SQUARED_PER_DENSITY
         self.peak_radius = ground + peak
@@ -30,6 +32,7 @@ class FlatParabolic:
     """A parabolic layer on a flat Earth that touches the sphere at the x axis."""
 
     top = 2000e3
+    thin_layer = None
 
     def __init__(self, critical=10e6, bottom=200e3, half_width=100e3, base=199e3):
         self.base = base  # of the spherical shell outside of which rays run straight

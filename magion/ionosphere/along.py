@@ -17,7 +17,13 @@ import numpy as np
 from magion.arrays import FloatArray, IntArray
 from magion.constants import EARTH_RADIUS
 from magion.geometry import great_circle, local_axes
-from magion.ionosphere.layers import BASE, TOP, LayerParameters, layered_density
+from magion.ionosphere.layers import (
+    BASE,
+    SPORADIC_HEIGHT,
+    TOP,
+    LayerParameters,
+    layered_density,
+)
 from magion.ionosphere.profile import to_polynomials
 
 STATION_SPACING: Final = 200e3
@@ -29,7 +35,7 @@ MARGIN: Final = 600e3
 ASIDE: Final = 150e3
 """How far the side stations stand from the great circle [m]."""
 
-_SPACING = 500.0
+_SPACING, _FINE_SPACING = 500.0, 250.0
 _WIDEST = 2.0 * ASIDE / EARTH_RADIUS
 
 
@@ -113,6 +119,10 @@ class PathIonosphere:
         and of its slope across the path, per unit of the sine [m⁻³].
     cells : int
         Cells in height [1].
+    height_step : float
+        Size of a cell [m].
+    thin_layer : float or None
+        Height of a sporadic E layer [m].
     """
 
     base: float
@@ -123,6 +133,8 @@ class PathIonosphere:
     rows: int
     table: FloatArray
     cells: int
+    height_step: float
+    thin_layer: float | None = None
 
     def density(self, position: FloatArray, which: IntArray) -> tuple[FloatArray, FloatArray]:
         """Electron density and its gradient at positions.
@@ -147,7 +159,7 @@ class PathIonosphere:
         square = ring + n * n
         radius = np.sqrt(square)
         # Height: which cell, and where in it.
-        x = (radius - (EARTH_RADIUS + self.base)) * (1.0 / _SPACING)
+        x = (radius - (EARTH_RADIUS + self.base)) * (1.0 / self.height_step)
         within = (x > 0.0) & (x < self.cells)
         x = np.minimum(np.maximum(x, 0.0), self.cells)
         cell = np.maximum(np.minimum(x.astype(np.intp), self.cells - 1), 0)  # NaN has no cell
@@ -184,7 +196,7 @@ class PathIonosphere:
         b = mixed[4:, 0]
         by_sine = (((b[3] * h + b[2]) * h + b[1]) * h + b[0]) * slanting
         by_row *= moving / (ring * self.spacing)
-        gradient = path * ((by_height * (1.0 / _SPACING) - by_sine * n / square) / radius)
+        gradient = path * ((by_height * (1.0 / self.height_step) - by_sine * n / square) / radius)
         gradient[0] -= by_row * t
         gradient[1] += by_row * c
         gradient[2] += by_sine / radius
@@ -207,8 +219,10 @@ def path_ionosphere(stations: Stations, hours: Sequence[LayerParameters]) -> Pat
         The ionospheres.
     """
     rows = stations.angle.size
-    cells = int((TOP - BASE) / _SPACING)
-    height: FloatArray = BASE + _SPACING * np.arange(-2.0, cells + 3)
+    sporadic = any(layers.foes > 0.0 for layers in hours)
+    step = _FINE_SPACING if sporadic else _SPACING
+    cells = int((TOP - BASE) / step)
+    height: FloatArray = BASE + step * np.arange(-2.0, cells + 3)
     parts = []
     for layers in hours:
         middle, right, left = layered_density(height, layers).reshape(3, rows, -1)
@@ -229,6 +243,8 @@ def path_ionosphere(stations: Stations, hours: Sequence[LayerParameters]) -> Pat
         rows=rows,
         table=np.ascontiguousarray(table),
         cells=cells,
+        height_step=step,
+        thin_layer=SPORADIC_HEIGHT if sporadic else None,
     )
 
 

@@ -9,7 +9,14 @@ class Medium(Protocol):
     """Electron density in space, of one or of several ionospheres.
 
     Below `base` and above `top` there is no plasma; rays run straight there.
+    `thin_layer` is the height of a layer so thin that a long step could miss
+    it, or None.
     """
+
+    @property
+    def thin_layer(self) -> float | None:
+        """Height of a layer that is thinner than a step [m]."""
+        ...
 
     @property
     def base(self) -> float:

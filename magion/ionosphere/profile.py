@@ -6,7 +6,7 @@ different hours share one batch.
 """
 
 from collections.abc import Callable, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from functools import partial
 from typing import Final
 
@@ -16,6 +16,7 @@ from magion.arrays import FloatArray, IntArray
 from magion.constants import EARTH_RADIUS
 from magion.ionosphere.layers import (
     BASE,
+    SPORADIC_HEIGHT,
     TOP,
     LayerParameters,
     frequency_of_density,
@@ -46,11 +47,14 @@ class VerticalProfiles:
         Lowest and greatest height with plasma [m].
     polynomials : ndarray, shape (profiles, cells, 4)
         Coefficients of 1, t, t², t³ in each cell, t from 0 to 1 [m⁻³].
+    thin_layer : float or None
+        Height of a sporadic E layer [m].
     """
 
     base: float
     top: float
     polynomials: FloatArray
+    thin_layer: float | None = None
 
     def at_height(
         self, height: FloatArray, which: IntArray | int = 0
@@ -217,12 +221,14 @@ def profiles_of_layers(layers: Sequence[LayerParameters]) -> VerticalProfiles:
     VerticalProfiles
         The profiles.
     """
-    return tabulated(
+    found = tabulated(
         [partial(layered_density, layers=one) for one in layers],
         BASE,
         TOP,
         interpolate=True,
     )
+    sporadic = any(one.foes > 0.0 for one in layers)
+    return replace(found, thin_layer=SPORADIC_HEIGHT) if sporadic else found
 
 
 def measured_profile(height: FloatArray, electron_density: FloatArray) -> VerticalProfiles:

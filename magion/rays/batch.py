@@ -35,6 +35,7 @@ DIRECTION_TOLERANCE = 1e-6
 COARSE = 10.0
 """Position tolerance from which flat rays may take longer steps [m]."""
 
+_THIN_LAYER_STEP = 400.0
 _FIRST_STEP = 4e3
 _LONGEST_STEP = 25e3
 _TOP_ROOM = 26e3  # more than the longest step, so that none looks beyond the top
@@ -288,6 +289,9 @@ def _advance(
         thin = np.clip(_FIRST_STEP + 0.4 * (height - medium.base), _FIRST_STEP, _LONGEST_STEP)
         if position_tolerance >= COARSE:
             thin = thin / np.maximum(np.abs(climb), 0.25)
+        if medium.thin_layer is not None:
+            gap = np.maximum(0.7 * np.abs(height - medium.thin_layer), _THIN_LAYER_STEP)
+            thin = np.minimum(thin, gap / np.maximum(np.abs(climb), 0.05))
         step = np.minimum(step * factor, thin)
         if done.any():
             for target, source in (

@@ -23,13 +23,13 @@ from magion.errors import InputError
 from magion.field import MagneticField
 from magion.geometry import Place, great_circle, local_axes, travel
 from magion.ionosphere.medium import Medium
-from magion.rays.batch import Fate, Track
+from magion.rays.batch import Track
 from magion.rays.chain import Chain, Specs, chain
 
 LARGEST_MISS: Final = 100.0
 """A homed ray comes down within this distance of the receiver [m]."""
 
-HOMED_TOLERANCE: Final = 4e-3
+HOMED_TOLERANCE: Final = 8e-3
 """Error of position accepted in one step of a homed ray [m]."""
 
 FAN_TOLERANCE: Final = 5.0
@@ -40,8 +40,10 @@ STEEPEST: Final = 4e6 * 180.0 / math.pi
 left out: they graze the peak of a layer, and their power is spread so thin that
 they lie more than 15 dB below an ordinary ray [m/rad]."""
 
-_SEARCH_TOLERANCE = 1.0
-_GOOD_MISS = 40.0
+_SEARCH_TOLERANCE = 10.0
+_GOOD_MISS = 60.0
+_NEAR_ENOUGH = 3e3
+_MOST_PASSES = 3
 _MOST_TRIALS = 9
 _ANTIPODES = math.radians(179.9)
 _JUMP = 12e3
@@ -345,7 +347,7 @@ def fans(
     field: MagneticField | None,
     zenith_angles: FloatArray | None = None,
     *,
-    refinements: int = 2,
+    refinements: int = 1,
     tolerance: float = FAN_TOLERANCE,
 ) -> list[Fan]:
     """Fans of rays in the plane of the great circle, finer where a layer gives out.
@@ -497,10 +499,34 @@ def home(
     if found is None:
         found = fans(link, specs, medium, field)
     search = _converged(link, _candidates(link, found), specs, medium, field)
+    rays: list[HomedRay] = []
+    for _ in range(_MOST_PASSES):
+        if search.spec.size == 0:
+            break
+        arrived, search = _fine_pass(link, search, specs, medium, field)
+        rays += arrived
+    rays.sort(key=lambda r: (r.spec, -r.zenith_vector[0]))
+    return [r for i, r in enumerate(rays) if not any(_same(r, q) for q in rays[:i])]
+
+
+def _same(one: HomedRay, other: HomedRay) -> bool:
+    """Whether two searches ended on one ray."""
+    return (
+        one.spec == other.spec
+        and float(np.hypot(*(one.zenith_vector - other.zenith_vector))) < 2e-4
+        and abs(one.apogees[-1] - other.apogees[-1]) < 2e3
+    )
+
+
+def _fine_pass(
+    link: Link, search: _Search, specs: Specs, medium: Medium, field: MagneticField | None
+) -> tuple[list[HomedRay], _Search]:
+    """Trace candidates finely, each with two beside it.
+
+    Those that come down at the receiver are done; the others take one step of
+    Newton's method with the slopes that their neighbours give.
+    """
     count = search.spec.size
-    if count == 0:
-        return []
-    # The rays themselves, and two beside each for the spreading.
     step = _BESIDE_STEP
     asides = np.repeat(step * np.eye(2), count, axis=1)
     beside = np.concatenate([search.w, search.w], axis=1) + asides
@@ -509,24 +535,16 @@ def home(
         link, np.concatenate([search.w, beside], axis=1), chosen, medium, field,
         tolerance=HOMED_TOLERANCE, keep_tracks=True,
     )  # fmt: skip
-    along, across = link.coordinates(ends.position)
-    miss = np.hypot(along[:count] - link.distance, across[:count])
-    slope = np.stack([along, across]).reshape(2, 3, count)
-    slope = (slope[:, 1:] - slope[:, :1]) / step
-    area = np.abs(slope[0, 0] * slope[1, 1] - slope[0, 1] * slope[1, 0])
-    size = np.hypot(*search.w)
-    spreading = area / np.maximum(np.sinc(size / np.pi), 1e-6)
-    order = np.lexsort((-search.w[0], search.spec))
-    rays: list[HomedRay] = []
-    for i in order:
-        if ends.fate[i] != Fate.LANDED or not miss[i] <= LARGEST_MISS:
-            continue
+    places = np.stack(link.coordinates(ends.position)).reshape(2, 3, count)
+    gap = places[:, 0] - np.array([[link.distance], [0.0]])
+    slope = (places[:, 1:] - places[:, :1]) / step  # [component, by which of w]
+    area = slope[0, 0] * slope[1, 1] - slope[0, 1] * slope[1, 0]
+    spreading = np.abs(area) / np.maximum(np.sinc(np.hypot(*search.w) / np.pi), 1e-6)
+    miss = np.hypot(*gap)
+    arrived = miss <= LARGEST_MISS  # False where the ray did not land
+    rays = []
+    for i in np.flatnonzero(arrived):
         hops = int(specs.hops[search.spec[i]])
-        apogees = tuple(float(a) for a in ends.apogees[:hops, i])
-        if rays and rays[-1].spec == search.spec[i]:
-            apart = np.hypot(*(rays[-1].zenith_vector - search.w[:, i]))
-            if apart < 2e-4 and abs(rays[-1].apogees[-1] - apogees[-1]) < 2e3:
-                continue
         rays.append(
             HomedRay(
                 spec=int(search.spec[i]),
@@ -535,7 +553,7 @@ def home(
                 arrival=unit(ends.direction[:, i]),
                 group_path=float(ends.group_path[i]),
                 phase_path=float(ends.phase_path[i]),
-                apogees=apogees,
+                apogees=tuple(float(a) for a in ends.apogees[:hops, i]),
                 bounces=tuple(ends.landings[k].position[:, i] for k in range(hops - 1)),
                 incidences=tuple(unit(ends.landings[k].direction[:, i]) for k in range(hops - 1)),
                 miss=float(miss[i]),
@@ -545,7 +563,16 @@ def home(
                 tracks=tuple(ends.landings[k].tracks[i] for k in range(hops)),
             )
         )
-    return rays
+    with np.errstate(invalid="ignore", divide="ignore"):
+        move = -np.stack(
+            [
+                (slope[1, 1] * gap[0] - slope[0, 1] * gap[1]) / area,
+                (slope[0, 0] * gap[1] - slope[1, 0] * gap[0]) / area,
+            ]
+        )
+    again = ~arrived & (np.hypot(*move) < 0.02)  # False where something did not land
+    search.w = search.w + np.where(again, move, 0.0)
+    return rays, search.take(again)
 
 
 def _converged(
@@ -605,4 +632,4 @@ def _converged(
         search.w[:, active] = target
         active = active[best[active] > _GOOD_MISS]
     search.w = best_w
-    return search.take(best <= LARGEST_MISS)
+    return search.take(best <= _NEAR_ENOUGH)

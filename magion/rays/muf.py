@@ -265,7 +265,7 @@ class _Bracket:
         steps = np.array([0.25, 0.5, 0.75])
         quarters = self.low[:, None] + (self.high - self.low)[:, None] * steps
         if near:
-            return quarters
+            return np.asarray(quarters)
         share = np.clip((middle - self.low) / (self.high - self.low), 0.0, 1.0)[:, None]
         around = np.clip(
             share + np.array([-0.08, 0.0, 0.08]), [0.02, 0.04, 0.06], [0.94, 0.96, 0.98]
