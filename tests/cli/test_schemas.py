@@ -131,7 +131,7 @@ def objects(part, root, name=""):
     for key, inner in keys_of(part, root).items():
         inner = follow(inner, root)
         if inner.get("type") == "array":
-            inner = (inner.get("prefixItems") or [inner["items"]])[0]
+            inner = follow((inner.get("prefixItems") or [inner["items"]])[0], root)
         if keys_of(inner, root):
             yield from objects(inner, root, f"{name}.{key}".lstrip("."))
 
@@ -375,7 +375,16 @@ def units_of_schema(command):
 
 @pytest.mark.parametrize("command", NUMBER)
 def test_numbers_of_a_schema_carry_their_unit(command):
-    suffixes = {"deg": "deg", "km": "km", "mhz": "MHz", "db": "dB", "nt": "nT", "ms": "ms"}
+    suffixes = {
+        "deg": "deg",
+        "km": "km",
+        "mhz": "MHz",
+        "db": "dB",
+        "nt": "nT",
+        "ms": "ms",
+        "hz": "Hz",
+        "min": "min",
+    }
     root = schema(command)
     for _, part in objects(root, root):
         for key, inner in keys_of(part, root).items():
@@ -398,7 +407,10 @@ def test_page_of_formats_has_every_key_with_its_unit(command):
         if line.startswith("| `"):
             for key in re.findall(r"`([^`]+)`", cells[0]):
                 rows[key] = None if cells[2] == "" else cells[2]
-    wanted = {k.replace("waves.", "waves[]."): u for k, u in units_of_schema(command).items()}
+    wanted = {
+        k.replace("waves.", "waves[].").replace("changes.", "changes[]."): u
+        for k, u in units_of_schema(command).items()
+    }
     if command == "wave":  # one table stands for both waves
         wanted = {k: u for k, u in wanted.items() if not k.startswith("extraordinary.")}
     assert rows == wanted
