@@ -2,7 +2,8 @@
 
 Both use the same analytic right-hand side, and both are timed at the coarsest
 tolerance at which every ray of the fan lands within 0.05 km of a converged
-reference (the general solver's on every tenth ray).
+reference. The general solver is timed on every tenth ray, and its error is
+taken on these and on the ten rays that answer most to the tolerance.
 """
 
 import time
@@ -54,19 +55,24 @@ def rows():
         ends = shoot(LINK, w, rays, MEDIUM, magnetic, tolerance=tolerance)
         return np.sqrt(((ends.position - reference) ** 2).sum(axis=0)).max()
 
-    tolerance = next(t for t in (4.0, 2.0, 1.0, 0.5, 0.2, 0.1) if batch_error(t) <= ALLOWED)
+    tolerance = next(
+        t for t in (4.0, 3.0, 2.0, 1.5, 1.0, 0.8, 0.5, 0.2) if batch_error(t) <= ALLOWED
+    )
     some = np.arange(0, 200, 10)
+    coarse = shoot(LINK, w, rays, MEDIUM, magnetic, tolerance=4.0).position
+    tender = np.argsort(-np.sqrt(((coarse - reference) ** 2).sum(axis=0)))[:10]
+
+    def error(index, scale):
+        landed = _one(start, directions[:, index], rays.hop(0, np.array([index])), magnetic, scale)
+        return float(np.linalg.norm(landed - reference[:, index]))
 
     def single(scale):
-        begin, worst = time.perf_counter(), 0.0
-        for i in some:
-            landed = _one(start, directions[:, i], rays.hop(0, np.array([i])), magnetic, scale)
-            worst = max(worst, float(np.linalg.norm(landed - reference[:, i])))
+        begin = time.perf_counter()
+        worst = max(error(i, scale) for i in some)
         return (time.perf_counter() - begin) / some.size * 200, worst
 
-    for scale in (30.0, 10.0, 3.0, 1.0, 0.3, 0.1):
-        seconds, worst = single(scale)
-        if worst <= ALLOWED:
+    for scale in (30.0, 20.0, 10.0, 6.0, 3.0, 2.0, 1.0, 0.6, 0.3, 0.1):
+        if max(error(i, scale) for i in tender) <= ALLOWED and single(scale)[1] <= ALLOWED:
             break
     ratios = []
     for _ in range(3):  # in turn, so that a change of the machine's speed falls on both
