@@ -842,9 +842,10 @@ def _probabilities(
         rays = (wave, *wave.rays) if wave.arrives else ()
         muf = float(mufs.f_region[i, 0])
         absorbed = not wave.arrives and wave.absorption_db is not None
+        passed = wave.wave is Mode.EXTRAORDINARY and frequency <= scene.gyro_limit
         if any(r.layer in ("E", "Es") for r in rays):
             levels.append(0.0)
-        elif absorbed or not math.isfinite(muf) or frequency <= (i and scene.gyro_limit):
+        elif absorbed or passed or not math.isfinite(muf):
             levels.append(math.inf)
         else:
             levels.append(least_fof2(frequency, muf, overhead.fof2, gyro, i == 0))

@@ -161,7 +161,9 @@ def scene_of(link: Link, moments: Sequence[datetime], given: IonosphereInput) ->
         if given.foes_mhz is not None:
             scaled = replace(scaled, foes=given.foes_mhz * 1e6)
         middle = scaled.at(count)
-        caveats = [assumed] if assumed and known.fof2 is None else []
+        caveats = [] if assumed is None else [assumed]
+        if assumed is not None and known.fof2 is not None:
+            caveats = ["A solar flux of 120 sfu is assumed for what was not given."]
         caveats += known.caveats
         if float(middle.foe) > float(middle.fof2):
             caveats.append("foE is above foF2: the E region hides the F region from below.")

@@ -191,9 +191,17 @@ def _shape(wave: WaveOnPath) -> str | None:
     return f"{wave.shape.value}, {ratio}"
 
 
+def _marked(ray: RayAnswer) -> str:
+    """The label, with the wave of every hop where they differ: 2F2(xo)."""
+    label, sequence = ray.label or "", ray.sequence or ""
+    return label if len(set(sequence)) <= 1 else f"{label[:-3]}({sequence})"
+
+
 def _others(rays: tuple[RayAnswer, ...]) -> str | None:
-    cells = [f"{r.label} {r.arrival.elevation_deg:.0f}°" for r in rays if r.arrival]
-    return ", ".join(cells[:2]) + (", …" if len(cells) > 2 else "") if cells else None
+    cells = [f"{_marked(r)} {r.arrival.elevation_deg:.0f}°" for r in rays if r.arrival]
+    if not cells:
+        return None
+    return cells[0] + (f" and {len(cells) - 1} more" if len(cells) > 1 else "")
 
 
 _STATES = {
