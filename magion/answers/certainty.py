@@ -56,7 +56,7 @@ class PathMufs:
     f_region: FloatArray
 
 
-def path_mufs(scene: Scene, hops: tuple[int, ...]) -> PathMufs:
+def path_mufs(scene: Scene, hops: tuple[int, ...], *, wide: bool = False) -> PathMufs:
     """MUFs of both waves of a path at every hour of a scene.
 
     Parameters
@@ -64,7 +64,9 @@ def path_mufs(scene: Scene, hops: tuple[int, ...]) -> PathMufs:
     scene : Scene
         The path.
     hops : tuple of int
-        Numbers of hops that are tried [1].
+        Numbers of hops; the first with which anything arrives counts [1].
+    wide : bool
+        As for :func:`magion.rays.muf.maximum_usable_frequencies` [1].
 
     Returns
     -------
@@ -78,9 +80,18 @@ def path_mufs(scene: Scene, hops: tuple[int, ...]) -> PathMufs:
     for count in hops:
         guess = np.array([_guess(scene.link, o.fof2, o.foe, count) for o in scene.overheads])
         found: Mufs = maximum_usable_frequencies(
-            scene.link, which, extraordinary, count, np.tile(guess, 2), scene.medium, scene.field
+            scene.link,
+            which,
+            extraordinary,
+            count,
+            np.tile(guess, 2),
+            scene.medium,
+            scene.field,
+            wide=wide,
         )
         best = [np.fmax(b, f) for b, f in zip(best, (found.any_layer, found.f_region), strict=True)]
+        if np.isfinite(best[0]).all():
+            break
     return PathMufs(any_layer=best[0].reshape(2, -1), f_region=best[1].reshape(2, -1))
 
 

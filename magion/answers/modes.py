@@ -22,7 +22,7 @@ from magion.rays.exit import (
 )
 from magion.rays.homing import Fan, HomedRay, default_zenith_angles, fans, home
 from magion.rays.losses import absorption, phase_path_change
-from magion.rays.muf import LONGEST_HOP
+from magion.rays.muf import LONGEST_HOP, branches
 from magion.waves import MODES, Mode, index_difference, phase_to_go, wave_axes
 
 GREATEST_ABSORPTION_DB: Final = 60.0
@@ -30,6 +30,9 @@ GREATEST_ABSORPTION_DB: Final = 60.0
 
 GREATEST_FOCUS_DB: Final = 9.0
 """Bound on the gain where rays cross, at the skip distance and near antipodes [dB]."""
+
+SHORTEST_REACH: Final = 1500e3
+"""Least reach of one hop that is reckoned with [m]."""
 
 MOST_MIXED_HOPS: Final = 2
 """Up to so many hops every sequence of waves is traced; beyond, only pure ones [1]."""
@@ -105,29 +108,36 @@ class ModesFound:
     ----------
     rays : tuple of ModeRay
         Every ray found.
+    hops : tuple of int
+        Numbers of hops that were traced [1].
     fans : dict
         Fan of the one-hop rays of each wave.
     """
 
     rays: tuple[ModeRay, ...]
+    hops: tuple[int, ...]
     fans: dict[Mode, Fan]
 
 
-def hop_counts(distance: float) -> tuple[int, ...]:
+def hop_counts(distance: float, reach: float = LONGEST_HOP) -> tuple[int, ...]:
     """Numbers of hops that are traced for a distance.
 
     Parameters
     ----------
     distance : float
         Length of the path [m].
+    reach : float
+        Greatest length of one hop [m].
 
     Returns
     -------
     tuple of int
-        The least number of hops of at most 3900 km, and one more [1].
+        The least number of hops of at most 3900 km and one more; where one hop
+        reaches less, also the least number of those and one more [1].
     """
     least = max(1, math.ceil(distance / LONGEST_HOP))
-    return least, least + 1
+    short = max(1, math.ceil(distance / max(reach, SHORTEST_REACH)))
+    return tuple(sorted({least, least + 1, *((short, short + 1) if short > least else ())}))
 
 
 def sequences(hops: int, modes: tuple[Mode, ...]) -> list[Sequence]:
@@ -173,7 +183,8 @@ def find_modes(scene: Scene, frequency: float, modes: tuple[Mode, ...], hour: in
     found: list[Fan] = []
     single: list[Sequence] = [(m,) for m in modes]
     one_hop = fans(scene.link, _specs(frequency, hour, single), scene.medium, scene.field)
-    counts = hop_counts(scene.link.distance)
+    reach = max((b.greatest for f in one_hop for b in branches(f)), default=LONGEST_HOP)
+    counts = hop_counts(scene.link.distance, reach)
     for hops in counts:
         if hops == 1:
             wanted += single
@@ -192,7 +203,7 @@ def find_modes(scene: Scene, frequency: float, modes: tuple[Mode, ...], hour: in
     specs = _specs(frequency, hour, wanted)
     homed = home(scene.link, specs, scene.medium, scene.field, found)
     rays = [_mode_ray(scene, frequency, hour, wanted[r.spec], r) for r in homed]
-    return ModesFound(rays=tuple(rays), fans=dict(zip(modes, one_hop, strict=True)))
+    return ModesFound(rays=tuple(rays), hops=counts, fans=dict(zip(modes, one_hop, strict=True)))
 
 
 def _specs(frequency: float, hour: int, wanted: list[Sequence]) -> Specs:

@@ -498,7 +498,9 @@ def answer_path(
     overhead = scene.overheads[0]
     modes = _modes_at(scene, frequency)
     found = find_modes(scene, frequency, modes, 0)
-    mufs = path_mufs(scene, hop_counts(link.distance)[:1])
+    mufs = path_mufs(scene, found.hops)
+    if _contradicts(mufs, found, frequency):
+        mufs = path_mufs(scene, found.hops, wide=True)
     shifts = _doppler_shifts(scene, frequency, found, given)
     waves = tuple(_wave(scene, frequency, m, found, mufs, shifts) for m in MODES)
     pair = (waves[0], waves[1])
@@ -571,6 +573,16 @@ def _midpoint_field(latitude: float, longitude: float, moment: datetime) -> Midp
 def _modes_at(scene: Scene, frequency: float) -> tuple[Mode, ...]:
     """Waves that the ionosphere can turn back at a frequency."""
     return MODES if frequency > scene.gyro_limit else (Mode.ORDINARY,)
+
+
+def _contradicts(mufs: PathMufs, found: ModesFound, frequency: float) -> bool:
+    """Whether a ray arrives above its wave's MUF, as strong tilts can make it."""
+    for i, mode in enumerate(MODES):
+        fewest = [r for r in found.rays if set(r.sequence) == {mode}]
+        muf = float(mufs.any_layer[i, 0])
+        if fewest and not muf >= 0.995 * frequency:
+            return True
+    return False
 
 
 def _wave(
@@ -718,8 +730,7 @@ def _reason(scene: Scene, frequency: float, fan: Fan) -> str:
             f"{skip / 1e3:.0f} km (skip distance)"
         )
     if distance > reach:
-        hops = max(hop_counts(distance))
-        return f"one hop reaches {reach / 1e3:.0f} km at most, and {hops} do not come down here"
+        return f"one hop reaches {reach / 1e3:.0f} km at most, and several do not come down here"
     return "no ray of this wave comes down at this distance, between those of two layers"
 
 
@@ -781,7 +792,7 @@ def _changes_of_day(
     if len(moments) < 2 or given.profile is not None:
         return ()
     scene = scene_of(link, moments, given)
-    mufs = path_mufs(scene, hop_counts(link.distance)[:1])
+    mufs = path_mufs(scene, hop_counts(link.distance))
     relative = np.array([(o.fof2_error or 0.0) / o.fof2 for o in scene.overheads])
     return changes(moments, mufs, frequency, relative)
 

@@ -16,7 +16,7 @@ from magion.constants import EARTH_RADIUS
 from magion.field import MagneticField
 from magion.ionosphere.medium import Medium
 from magion.rays.chain import Specs
-from magion.rays.homing import Fan, Link, fans
+from magion.rays.homing import Fan, Link, default_zenith_angles, fans
 
 LONGEST_HOP: Final = 3900e3
 """Greatest length of one hop that is tried [m]."""
@@ -24,7 +24,7 @@ LONGEST_HOP: Final = 3900e3
 F_REGION: Final = 130e3
 """Height above which a ray counts as turned back by the F region [m]."""
 
-_RAYS = 16
+_RAYS = 18
 _FIRST = (0.7, 0.85, 0.97, 1.08, 1.22, 1.45)
 _ROUNDS, _ROUNDS_NEAR = 2, 4
 _SLACK = 0.5e3
@@ -144,8 +144,10 @@ def _angles(link: Link, hops: int) -> FloatArray:
     low = max(elevation_of_hop(length, 85e3) - np.radians(2.0), np.radians(0.4))
     high = elevation_of_hop(length, 550e3) + np.radians(4.0)
     if length < 250e3:
-        high = np.pi / 2.0 + np.radians(8.0)  # a tilt may send the ray off backward
+        high = np.pi / 2.0 + np.radians(14.0)  # a tilt may send the ray off backward
     low = min(low, high - np.radians(10.0))
+    if length < 250e3:
+        low = min(low, np.pi / 2.0 - np.radians(14.0))
     return np.linspace(np.pi / 2.0 - high, np.pi / 2.0 - low, _RAYS)
 
 
@@ -173,6 +175,8 @@ def maximum_usable_frequencies(
     guess: FloatArray,
     medium: Medium,
     field: MagneticField | None,
+    *,
+    wide: bool = False,
 ) -> Mufs:
     """MUF of waves over a number of hops, for several ionospheres at once.
 
@@ -190,13 +194,16 @@ def maximum_usable_frequencies(
         Rough values, within a factor of 1.6 [Hz].
     medium, field
         Electron density and geomagnetic field.
+    wide : bool
+        Whether to look at every elevation and not only at those of a level
+        ionosphere; for strong tilts [1].
 
     Returns
     -------
     Mufs
         Of every ionosphere and wave.
     """
-    angles = _angles(link, hops)
+    angles = default_zenith_angles(2.0) if wide else _angles(link, hops)
     count = guess.size
 
     def margins(trial: FloatArray) -> FloatArray:
