@@ -604,6 +604,8 @@ def _wave(
             ),
         )
     muf = float(mufs.any_layer[MODES.index(mode), 0]) / 1e6
+    if any(set(r.sequence) == {mode} for r in found.rays):
+        muf = max(muf, frequency / 1e6) if math.isfinite(muf) else frequency / 1e6
     muf_mhz = muf if math.isfinite(muf) else None
     margin = None if muf_mhz is None else muf_mhz - frequency / 1e6
     skip = skip_distance(found.fans[mode])
