@@ -15,8 +15,9 @@ from typing import TYPE_CHECKING
 
 if TYPE_CHECKING:
     from magion.answers.inputs import IonosphereInput
-    from magion.answers.path import PathAnswer, answer_path
+    from magion.answers.path import answer_path
     from magion.answers.point import FieldAnswer, WaveAnswer, answer_field, answer_wave
+    from magion.answers.records import PathAnswer
     from magion.errors import InputError, MagionError, OutsideModelError
     from magion.geometry import Place, parse_place
     from magion.polarization import Hand, Shape
@@ -32,7 +33,7 @@ _HOMES = {
     "MagionError": "errors",
     "Mode": "waves",
     "OutsideModelError": "errors",
-    "PathAnswer": "answers.path",
+    "PathAnswer": "answers.records",
     "Place": "geometry",
     "Shape": "polarization",
     "WaveAnswer": "answers.point",

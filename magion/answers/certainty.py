@@ -16,7 +16,7 @@ import numpy as np
 
 from magion.answers.scene import Scene
 from magion.arrays import FloatArray
-from magion.rays.homing import Link
+from magion.rays.link import Link
 from magion.rays.muf import Mufs, elevation_of_hop, maximum_usable_frequencies
 from magion.waves import extraordinary_critical_frequency
 

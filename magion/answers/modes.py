@@ -20,7 +20,8 @@ from magion.rays.exit import (
     limiting_polarization,
     plasma_at_apex,
 )
-from magion.rays.homing import Fan, HomedRay, default_zenith_angles, fans, home
+from magion.rays.fans import Fan, default_zenith_angles, fans
+from magion.rays.homing import HomedRay, home
 from magion.rays.losses import absorption, phase_path_change
 from magion.rays.muf import LONGEST_HOP, branches
 from magion.waves import MODES, Mode, index_difference, phase_to_go, wave_axes

@@ -14,7 +14,7 @@ from magion.ionosphere.along import Stations, path_ionosphere, stations_along
 from magion.ionosphere.layers import LayerParameters, frequency_of_density
 from magion.ionosphere.medium import Medium
 from magion.ionosphere.profile import VerticalProfiles, profiles_of_layers
-from magion.rays.homing import Link
+from magion.rays.link import Link
 
 _DAY_SPREAD, _NIGHT_SPREAD = 0.12, 0.18
 

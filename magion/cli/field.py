@@ -29,15 +29,8 @@ def command(
       magion field 46.50,11.35 --height 100 --date 2026-06-21
     """  # noqa: D301
     from magion.answers.point import answer_field
-    from magion.cli.writing import write
-    from magion.render.data import dotted_record, to_csv, to_json
+    from magion.cli.writing import give
     from magion.render.text import field_text
 
     answer = answer_field(place, when or datetime.now(UTC), height_km=height)
-    if form == "json":
-        text = to_json(answer)
-    elif form == "csv":
-        text = to_csv([dotted_record(answer)])
-    else:
-        text = field_text(answer)
-    write(text, output)
+    give(answer, form, output, field_text)

@@ -59,17 +59,11 @@ def command(
       magion path 46.50,11.35 JN57rb -f 5.3 --time 2026-06-21T12:00Z --fof2 6.1
     """  # noqa: D301
     from magion.answers.path import answer_path
-    from magion.cli.writing import write
-    from magion.render.data import path_rows, to_csv, to_json
+    from magion.cli.writing import give
+    from magion.render.data import path_rows
     from magion.render.text import path_text
 
     answer = answer_path(
         transmitter, receiver, frequency, when, ionosphere_from(**known), with_changes=changes
     )
-    if form == "json":
-        text = to_json(answer)
-    elif form == "csv":
-        text = to_csv(path_rows(answer))
-    else:
-        text = path_text(answer)
-    write(text, output)
+    give(answer, form, output, path_text, path_rows)

@@ -36,8 +36,7 @@ def command(
       magion wave --frequency 5.3 --plasma 3.7 --gyro 1.2 --angle 25
     """  # noqa: D301
     from magion.answers.point import answer_wave
-    from magion.cli.writing import write
-    from magion.render.data import dotted_record, to_csv, to_json
+    from magion.cli.writing import give
     from magion.render.text import wave_text
 
     answer = answer_wave(
@@ -47,10 +46,4 @@ def command(
         theta_deg=angle,
         collisions=collisions,
     )
-    if form == "json":
-        text = to_json(answer)
-    elif form == "csv":
-        text = to_csv([dotted_record(answer)])
-    else:
-        text = wave_text(answer)
-    write(text, output)
+    give(answer, form, output, wave_text)

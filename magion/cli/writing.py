@@ -3,12 +3,52 @@
 import os
 import sys
 import tempfile
+from collections.abc import Callable
 from pathlib import Path
+from typing import Any
 
 import click
 
 from magion.errors import InputError
 from magion.formats.tables import printable
+
+
+def give(
+    answer: Any,
+    form: str,
+    output: Path | None,
+    as_text: Callable[[Any], str],
+    rows: Callable[[Any], list[dict[str, Any]]] | None = None,
+) -> None:
+    """Write an answer in the form asked for.
+
+    Parameters
+    ----------
+    answer : record
+        The answer.
+    form : str
+        "text", "json" or "csv".
+    output : Path or None
+        The file; None for standard output.
+    as_text : callable
+        The answer's text.
+    rows : callable, optional
+        The rows of its CSV; one row of all its keys if not given.
+
+    Raises
+    ------
+    InputError
+        If the file cannot be written.
+    """
+    from magion.render.data import dotted_record, to_csv, to_json
+
+    if form == "json":
+        text = to_json(answer)
+    elif form == "csv":
+        text = to_csv([dotted_record(answer)] if rows is None else rows(answer))
+    else:
+        text = as_text(answer)
+    write(text, output)
 
 
 def write(text: str, output: Path | None) -> None:

@@ -16,7 +16,8 @@ from magion.constants import EARTH_RADIUS
 from magion.field import MagneticField
 from magion.ionosphere.medium import Medium
 from magion.rays.chain import Specs
-from magion.rays.homing import Fan, Link, default_zenith_angles, fans
+from magion.rays.fans import Fan, default_zenith_angles, fans
+from magion.rays.link import Link
 
 LONGEST_HOP: Final = 3900e3
 """Greatest length of one hop that is tried [m]."""

@@ -9,7 +9,7 @@ from collections.abc import Iterable
 from enum import Enum
 from typing import Any, get_args, get_origin, get_type_hints
 
-from magion.answers.path import PathAnswer, RayAnswer, WaveOnPath
+from magion.answers.records import PathAnswer, RayAnswer, WaveOnPath
 
 _FORMULA = ("=", "+", "-", "@", "\t", "\r")
 

@@ -3,8 +3,8 @@
 import textwrap
 from collections.abc import Callable
 
-from magion.answers.path import End, PathAnswer, RayAnswer, WaveOnPath
 from magion.answers.point import FieldAnswer, OneWave, WaveAnswer
+from magion.answers.records import End, PathAnswer, RayAnswer, WaveOnPath
 from magion.polarization import Hand, hand_in_words
 
 WIDTH = 80

@@ -14,7 +14,7 @@ from scipy.integrate import solve_ivp
 from magion.constants import EARTH_RADIUS
 from magion.rays.batch import distance_to_height
 from magion.rays.equations import derivative
-from magion.rays.homing import shoot
+from magion.rays.fans import shoot
 from tests.benchmarks.scene import LINK, MEDIUM, fan, field
 
 ALLOWED = 50.0

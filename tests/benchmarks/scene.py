@@ -9,7 +9,7 @@ from magion.geometry import parse_place
 from magion.ionosphere.layers import LayerParameters
 from magion.ionosphere.profile import profiles_of_layers
 from magion.rays.chain import Specs
-from magion.rays.homing import link_between
+from magion.rays.link import link_between
 
 WHEN = datetime(2026, 6, 21, 12, tzinfo=UTC)
 TRANSMITTER, RECEIVER = parse_place("46.50,11.35"), parse_place("50.0,8.0")

@@ -8,7 +8,7 @@ from magion.answers.inputs import IonosphereInput
 from magion.answers.modes import find_modes, hop_counts
 from magion.answers.scene import scene_of
 from magion.geometry import parse_place
-from magion.rays.homing import link_between
+from magion.rays.link import link_between
 from magion.waves import MODES
 from tests.benchmarks.scene import RECEIVER, TRANSMITTER, WHEN
 

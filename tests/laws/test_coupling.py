@@ -39,7 +39,9 @@ from magion.rays.batch import Fate
 from magion.rays.chain import specs_of
 from magion.rays.coupling import DEEPEST, carry, share_of_other
 from magion.rays.exit import RayPlasma, exit_plasma, limiting_polarization
-from magion.rays.homing import home, link_between, shoot
+from magion.rays.fans import shoot
+from magion.rays.homing import home
+from magion.rays.link import link_between
 from magion.rays.losses import absorption, phase_path_change
 from magion.waves import MODES, Mode, index_difference, phase_to_go, polarization_vectors
 from tests.media import AxialDipole
@@ -194,10 +196,10 @@ def plasma_part(plasma, index):
 @pytest.mark.parametrize("mode", MODES)
 @pytest.mark.parametrize(
     ("X", "Y", "Z", "theta"),
-    [(0.1, 0.3, 0.0, 30.0), (0.3, 0.2, 0.05, 85.0), (0.02, 0.7, 0.4, 120.0)],
+    [(0.1, 0.3, 0.0, 30.0), (0.3, 0.2, 0.05, 85.0), (0.02, 0.7, 0.1, 120.0)],
 )
 def test_uniform_plasma_feeds_nothing(mode, X, Y, Z, theta):
-    plasma = straight(X, Y, Z, np.radians(theta), 0.7, np.linspace(0.0, 40e3, 401))
+    plasma = straight(X, Y, Z, np.radians(theta), 0.7, np.linspace(0.0, 10e3, 101))
     field, x, y = carry(plasma, FREQUENCY, mode)
     states, i = states_at_end(plasma), MODES.index(mode)
     assert share_of_other(field, states[i], states[1 - i]) < 1e-12
@@ -224,10 +226,10 @@ def test_without_phase_the_ellipse_stays_as_it_was(mode):
 def test_slow_change_takes_the_wave_along(mode):
     shares = [share(slope(phase), FREQUENCY, mode) for phase in (20.0, 60.0, 180.0)]
     # A step with two continuous derivatives leaves an amplitude that falls as phase**-3, a share
-    # as phase**-6: 9**6 = 5e5 over the range. The floor is that of the slabs.
-    assert shares[0] < 3e-3
-    assert shares[1] < 0.1 * shares[0]
-    assert shares[2] < 1e-6
+    # as phase**-6: some 3**6 = 700 from one to the next.
+    assert shares[0] < 0.02
+    assert shares[1] < 0.01 * shares[0]
+    assert shares[2] < 0.01 * shares[1]
 
 
 @pytest.mark.parametrize("mode", MODES)
@@ -268,9 +270,9 @@ def test_general_solver_finds_the_same_field(mode, phase, theta, X, Z):
 
 @pytest.mark.parametrize("mode", MODES)
 def test_thinner_slabs_change_the_share_little(mode):
-    # slabs of 0.06 rad of O-X phase, as thick as those on a real way out get near its end
-    coarse, fine = (share(slope(12.0, count=n), FREQUENCY, mode) for n in (200, 400))
-    assert coarse > 1e-4
+    # slabs of 0.12 and 0.06 rad of O-X phase
+    coarse, fine = (share(slope(12.0, count=n), FREQUENCY, mode) for n in (100, 200))
+    assert coarse > 1e-2
     assert abs(coarse / fine - 1.0) < 0.02
 
 
@@ -333,3 +335,138 @@ def ways_out(day):
             plasma = exit_plasma(track, f, 0, medium, FIELD)
             found.append((f, mode, plasma, limiting_polarization(track, f, 0, medium, FIELD)))
     return found
+
+
+def across(theta):
+    """Angle between wave normal and the field's line, 0 to 90 degrees."""
+    return 90.0 - abs(90.0 - np.degrees(theta))
+
+
+def ratio_errors(day, mode, field_at_exit):
+    """Field angle [deg] and axial ratio to that of the limiting place [dB], of every way out."""
+    rows = []
+    for f, kind, plasma, limiting in ways_out(day):
+        if kind is mode:
+            local = axial_ratio_db(limiting.waves()[MODES.index(mode)])
+            rows.append((across(limiting.theta), axial_ratio_db(field_at_exit(plasma, f)) - local))
+    return np.array(rows, dtype=float).T
+
+
+def assert_ratios_agree(angle, error):
+    steep = np.abs(error[angle <= 70.0])
+    assert steep.size >= 20
+    assert steep.max() < 0.35
+    slanting = np.abs(error[(angle > 70.0) & (angle <= 80.0)])
+    assert slanting.size >= 2
+    assert slanting.max() < 1.3
+
+
+@pytest.mark.parametrize("mode", MODES)
+@pytest.mark.parametrize("day", [True, False])
+def test_limiting_place_gives_the_axial_ratio(day, mode):
+    # from 12 rad on, where both waves of the coupled equations are separate to 1e-3
+    def at_exit(plasma, frequency):
+        return coupled(from_depth(plasma, frequency, 12.0), frequency, mode, finer=1)
+
+    assert_ratios_agree(*ratio_errors(day, mode, at_exit))
+
+
+HARD_START = pytest.mark.xfail(
+    strict=True,
+    reason="carry() starts with the local wave alone 60 rad (or the apex) before the exit, where "
+    "the plasma already changes. A true wave has there a first-order part of the other one; the "
+    "part left out runs free, and where the extraordinary wave is absorbed by 40 dB more than the "
+    "ordinary, it grows beside it to -16 dB. Cure: start as the eigenvector of the coupled "
+    "equations, and start nearer to the exit (12 rad)",
+)
+
+
+@pytest.mark.parametrize(
+    ("day", "mode"),
+    [
+        (True, MODES[0]),
+        pytest.param(True, MODES[1], marks=HARD_START),
+        (False, MODES[0]),
+        pytest.param(False, MODES[1], marks=HARD_START),
+    ],
+)
+def test_carried_wave_has_the_axial_ratio_of_the_limiting_place(day, mode):
+    def at_exit(plasma, frequency):
+        return carry(from_depth(plasma, frequency, DEEPEST), frequency, mode)[0]
+
+    assert_ratios_agree(*ratio_errors(day, mode, at_exit))
+
+
+@HARD_START
+def test_share_does_not_hang_on_where_the_waves_are_started():
+    worst = 0.0
+    for f, mode, plasma, limiting in ways_out(True):
+        if across(limiting.theta) > 70.0:
+            continue
+        shares = [share(from_depth(plasma, f, depth), f, mode) for depth in (15.0, DEEPEST)]
+        if max(shares) > 1e-4:  # what lies below -40 dB is of no account
+            worst = max(worst, abs(10.0 * np.log10(shares[1] / shares[0])))
+    assert worst < 2.0
+
+
+@pytest.mark.parametrize("day", [True, False])
+def test_thinner_slabs_on_a_real_way_out(day):
+    for f, mode, plasma, limiting in ways_out(day):
+        if across(limiting.theta) > 80.0:
+            deep = from_depth(plasma, f, 12.0)
+            halves = halved(deep)
+            coarse, fine = share(deep, f, mode), share(halves, f, mode)
+            # 0.13 dB, of first order in the 200 m; of no account below -40 dB
+            assert abs(coarse / fine - 1.0) < 0.03 or fine < 1e-4
+
+
+def halved(plasma):
+    """The same way with a point more between each two."""
+
+    def twice(values):
+        middle = 0.5 * (values[..., 1:] + values[..., :-1])
+        out = np.empty((*values.shape[:-1], 2 * values.shape[-1] - 1))
+        out[..., ::2], out[..., 1::2] = values, middle
+        return out
+
+    names = ("position", "wave_normal", "field", "X", "Y", "Z", "theta", "length")
+    return RayPlasma(**{name: twice(getattr(plasma, name)) for name in names})
+
+
+# -- the phase path as the layers change --------------------------------------------------------
+
+
+@pytest.mark.parametrize("mode", MODES)
+@pytest.mark.parametrize("frequency", [5.3e6, 7.1e6])
+def test_phase_path_follows_the_layers(mode, frequency):
+    base = layers(True)
+    changed = (base.scaled(fof2=1.001), base.scaled(hmf2=1.001), base.scaled(foe=1.001))
+    medium = profiles_of_layers([base, *changed])
+    link = link_between(
+        Place(latitude_deg=50.0, longitude_deg=0.0), Place(latitude_deg=52.0, longitude_deg=6.0)
+    )
+    specs = specs_of([(frequency, k, (mode,)) for k in range(4)])
+    goal = EARTH_RADIUS * (link.up * np.cos(link.angle) + link.forward * np.sin(link.angle))
+    rays = home(link, specs, medium, FIELD)
+    first = [r for r in rays if r.spec == 0]
+    assert first
+    for ray in first:
+        paths = []
+        for k in range(4):
+            near = min(
+                (r for r in rays if r.spec == k),
+                key=lambda r: np.linalg.norm(r.zenith_vector - ray.zenith_vector),
+            )
+            assert abs(near.apogees[0] - ray.apogees[0]) < 3e3
+            one = specs.take(np.array([k]))
+            ends = shoot(link, near.zenith_vector[:, None], one, medium, FIELD, tolerance=1e-3)
+            # It misses by some 50 m; on the ground n = 1, so the phase path to the receiver is
+            # less by the miss along the travel (the rest goes with its square, below 0.1 m).
+            paths.append(ends.phase_path[0] - near.arrival @ (ends.position[:, 0] - goal))
+        found = np.array(paths[1:]) - paths[0]
+        expected = phase_path_change(
+            ray.tracks[0], frequency, mode is Mode.EXTRAORDINARY, np.arange(4), medium, FIELD
+        )
+        assert np.abs(found).max() > 5.0
+        # a thousandth moves the ray by as much of itself: 0.3 % found, and 0.1 m of the ends
+        assert np.allclose(expected, found, rtol=0.01, atol=0.1)

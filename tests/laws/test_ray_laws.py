@@ -23,7 +23,9 @@ from magion.ionosphere.profile import profiles_of_layers
 from magion.rays.batch import Fate, trace
 from magion.rays.chain import Specs, specs_of
 from magion.rays.equations import derivative_and_hamiltonian
-from magion.rays.homing import LARGEST_MISS, home, link_between, shoot
+from magion.rays.fans import shoot
+from magion.rays.homing import LARGEST_MISS, home
+from magion.rays.link import link_between
 from magion.waves import MODES, refractive_index_squared
 from tests.media import AxialDipole, Scaled
 
