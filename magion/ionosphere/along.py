@@ -38,6 +38,26 @@ ASIDE: Final = 150e3
 _SPACING, _FINE_SPACING = 500.0, 250.0
 _WIDEST = 2.0 * ASIDE / EARTH_RADIUS
 
+# Weights of four spline coefficients and of their derivatives, as polynomials of
+# the place u between two stations: rows times (1, u, u², u³).
+_SPLINE = (
+    np.array(
+        [
+            [1.0, -3.0, 3.0, -1.0],
+            [4.0, 0.0, -6.0, 3.0],
+            [1.0, 3.0, 3.0, -3.0],
+            [0.0, 0.0, 0.0, 1.0],
+            [-3.0, 6.0, -3.0, 0.0],
+            [0.0, -12.0, 9.0, 0.0],
+            [3.0, 6.0, -9.0, 0.0],
+            [0.0, 0.0, 3.0, 0.0],
+        ]
+    )
+    / 6.0
+)
+_FOUR = np.arange(4)[:, None]
+_RISING = np.array([[1.0], [2.0], [3.0]])
+
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class Stations:
@@ -158,45 +178,37 @@ class PathIonosphere:
         ring = c * c + t * t
         square = ring + n * n
         radius = np.sqrt(square)
-        # Height: which cell, and where in it.
-        x = (radius - (EARTH_RADIUS + self.base)) * (1.0 / self.height_step)
-        within = (x > 0.0) & (x < self.cells)
-        x = np.minimum(np.maximum(x, 0.0), self.cells)
-        cell = np.maximum(np.minimum(x.astype(np.intp), self.cells - 1), 0)  # NaN has no cell
-        h = x - cell
-        # Along: which interval of stations; beyond the ends, the last station.
-        last = self.rows - 1.0
-        y = (np.arctan2(t, c) - self.first) * (1.0 / self.spacing)
-        moving = (y > 0.0) & (y < last)
-        y = np.minimum(np.maximum(y, 0.0), last)
-        row = np.maximum(np.minimum(y.astype(np.intp), self.rows - 2), 0)
-        u = y - row
+        # In cells of the table, height and along: which one, and where in it. Beyond
+        # the last station the ionosphere is that of the last station.
+        place = np.empty((2, radius.size))
+        np.subtract(radius, EARTH_RADIUS + self.base, out=place[0])
+        np.arctan2(t, c, out=place[1])
+        place[1] -= self.first
+        place *= np.array([[1.0 / self.height_step], [1.0 / self.spacing]])
+        limit = np.array([[self.cells], [self.rows - 1]])
+        inside = (place > 0.0) & (place < limit)
+        place = np.minimum(np.maximum(place, 0.0), limit)
+        cell = np.maximum(np.minimum(place.astype(np.intp), limit - 1), 0)  # NaN has no cell
+        powers = np.empty((4, 2, radius.size))
+        powers[0] = 1.0
+        np.subtract(place, cell, out=powers[1])
+        np.multiply(powers[1], powers[1], out=powers[2])
+        np.multiply(powers[2], powers[1], out=powers[3])
+        height = powers[:, 0]
         v = n / radius
         slanting = np.abs(v) < _WIDEST
         v = np.minimum(np.maximum(v, -_WIDEST), _WIDEST)
-        start = (which * (self.rows + 2) + row) * self.cells + cell
-        step = self.cells * np.arange(4)
-        found = self.table.take(start + step[:, None], axis=1)
-        one = 1.0 - u
-        u2, one2 = u * u, one * one
-        weight = np.empty((2, 4, u.size))
-        weight[0, 0] = one2 * one
-        weight[0, 1] = 4.0 + 3.0 * u2 * (u - 2.0)
-        weight[0, 2] = 4.0 + 3.0 * one2 * (one - 2.0)
-        weight[0, 3] = u2 * u
-        weight[1, 0] = -3.0 * one2
-        weight[1, 1] = u * (9.0 * u - 12.0)
-        weight[1, 2] = one * (12.0 - 9.0 * one)
-        weight[1, 3] = 3.0 * u2
-        weight *= within * (1.0 / 6.0)
+        start = (which * (self.rows + 2) + cell[1]) * self.cells + cell[0]
+        found = self.table.take(start + self.cells * _FOUR, axis=1)
+        weight = (_SPLINE @ powers[:, 1]).reshape(2, 4, -1) * inside[0]
         mixed = np.einsum("wkn,ckn->cwn", weight, found)
         total = mixed[:4] + mixed[4:] * v
-        density, by_row = ((total[3] * h + total[2]) * h + total[1]) * h + total[0]
-        by_height = (3.0 * total[3, 0] * h + 2.0 * total[2, 0]) * h + total[1, 0]
-        b = mixed[4:, 0]
-        by_sine = (((b[3] * h + b[2]) * h + b[1]) * h + b[0]) * slanting
-        by_row *= moving / (ring * self.spacing)
-        gradient = path * ((by_height * (1.0 / self.height_step) - by_sine * n / square) / radius)
+        density, by_row = np.einsum("cwn,cn->wn", total, height)
+        by_height = np.einsum("cn,cn->n", total[1:, 0], height[:3] * _RISING)
+        by_height *= 1.0 / self.height_step
+        by_sine = np.einsum("cn,cn->n", mixed[4:, 0], height) * slanting
+        by_row *= inside[1] / (ring * self.spacing)
+        gradient = path * ((by_height - by_sine * n / square) / radius)
         gradient[0] -= by_row * t
         gradient[1] += by_row * c
         gradient[2] += by_sine / radius

@@ -261,7 +261,7 @@ def _advance(
         size = np.where(np.isfinite(size), size, 1e6)
         accepted = size <= 1.0
         size = np.maximum(size, 1e-6)
-        factor = np.clip(0.9 * size**-0.17 * previous**0.04, 0.1, np.where(accepted, 5.0, 0.9))
+        factor = np.clip(0.9 * size**-0.14 * previous**0.08, 0.1, np.where(accepted, 5.0, 0.9))
         previous = np.where(accepted, np.maximum(size, 1e-4), previous)
         taken = step * accepted
         state = np.where(accepted, trial, state)

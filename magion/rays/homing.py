@@ -29,7 +29,7 @@ from magion.rays.link import Link
 LARGEST_MISS: Final = 100.0
 """A homed ray comes down within this distance of the receiver [m]."""
 
-HOMED_TOLERANCE: Final = 8e-3
+HOMED_TOLERANCE: Final = 6e-3
 """Error of position accepted in one step of a homed ray [m]."""
 
 STEEPEST: Final = 4e6 * 180.0 / math.pi
