@@ -22,7 +22,7 @@ from magion.constants import EARTH_RADIUS
 from magion.field import MagneticField
 from magion.ionosphere.medium import Medium
 from magion.rays.batch import Track
-from magion.rays.chain import Specs
+from magion.rays.chain import Chain, Specs
 from magion.rays.fans import Fan, fans, shoot
 from magion.rays.link import Link
 
@@ -43,6 +43,7 @@ _NEAR_ENOUGH = 3e3
 _MOST_PASSES = 3
 _MOST_TRIALS = 9
 _BESIDE_STEP = 5e-4
+_LONGEST_MOVE = 0.02
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -173,15 +174,24 @@ def home(
     """
     if found is None:
         found = fans(link, specs, medium, field)
-    search = _converged(link, _candidates(link, found), specs, medium, field)
-    rays: list[HomedRay] = []
-    for _ in range(_MOST_PASSES):
-        if search.spec.size == 0:
-            break
-        arrived, search = _fine_pass(link, search, specs, medium, field)
-        rays += arrived
+    start = _candidates(link, found)
+    trials = (link, specs, medium, field)
+    # One step of Newton's method is enough for most; the others are searched for patiently.
+    near, far = _stepped(start, *_probe(start, *trials, tolerance=_SEARCH_TOLERANCE)[1:])
+    rays, left = _fine_passes(near, *trials)
+    hard = start.take(far | _indices_in(start, near, left))
+    if hard.spec.size:
+        rays += _fine_passes(_converged(link, hard, specs, medium, field), *trials)[0]
     rays.sort(key=lambda r: (r.spec, -r.zenith_vector[0]))
     return [r for i, r in enumerate(rays) if not any(_same(r, q) for q in rays[:i])]
+
+
+def _indices_in(start: _Search, near: _Search, left: BoolArray) -> BoolArray:
+    """Which of the first candidates those are that the fine passes left over."""
+    chosen = np.zeros(start.spec.size, dtype=bool)
+    for spec, low in zip(near.spec[left], near.low[left], strict=True):
+        chosen |= (start.spec == spec) & (start.low == low)
+    return chosen
 
 
 def _same(one: HomedRay, other: HomedRay) -> bool:
@@ -193,61 +203,104 @@ def _same(one: HomedRay, other: HomedRay) -> bool:
     )
 
 
-def _fine_pass(
-    link: Link, search: _Search, specs: Specs, medium: Medium, field: MagneticField | None
-) -> tuple[list[HomedRay], _Search]:
-    """Trace candidates finely, each with two beside it.
+def _probe(
+    search: _Search,
+    link: Link,
+    specs: Specs,
+    medium: Medium,
+    field: MagneticField | None,
+    *,
+    tolerance: float,
+    keep_tracks: bool = False,
+) -> tuple[Chain, FloatArray, FloatArray]:
+    """Trace candidates, each with two beside it.
 
-    Those that come down at the receiver are done; the others take one step of
-    Newton's method with the slopes that their neighbours give.
+    Returns the ends, the gaps to the receiver (2, n), and the slopes of the
+    landing place [component, by which of w, n].
     """
     count = search.spec.size
-    step = _BESIDE_STEP
-    asides = np.repeat(step * np.eye(2), count, axis=1)
+    asides = np.repeat(_BESIDE_STEP * np.eye(2), count, axis=1)
     beside = np.concatenate([search.w, search.w], axis=1) + asides
-    chosen = specs.take(np.concatenate([search.spec] * 3))
     ends = shoot(
-        link, np.concatenate([search.w, beside], axis=1), chosen, medium, field,
-        tolerance=HOMED_TOLERANCE, keep_tracks=True,
-    )  # fmt: skip
+        link,
+        np.concatenate([search.w, beside], axis=1),
+        specs.take(np.concatenate([search.spec] * 3)),
+        medium,
+        field,
+        tolerance=tolerance,
+        keep_tracks=keep_tracks,
+    )
     places = np.stack(link.coordinates(ends.position)).reshape(2, 3, count)
     gap = places[:, 0] - np.array([[link.distance], [0.0]])
-    slope = (places[:, 1:] - places[:, :1]) / step  # [component, by which of w]
-    area = slope[0, 0] * slope[1, 1] - slope[0, 1] * slope[1, 0]
-    spreading = np.abs(area) / np.maximum(np.sinc(np.hypot(*search.w) / np.pi), 1e-6)
-    miss = np.hypot(*gap)
-    arrived = miss <= LARGEST_MISS  # False where the ray did not land
-    rays = []
-    for i in np.flatnonzero(arrived):
-        hops = int(specs.hops[search.spec[i]])
-        rays.append(
-            HomedRay(
-                spec=int(search.spec[i]),
-                zenith_vector=search.w[:, i],
-                launch=link.launch(search.w[:, [i]])[:, 0],
-                arrival=unit(ends.direction[:, i]),
-                group_path=float(ends.group_path[i]),
-                phase_path=float(ends.phase_path[i]),
-                apogees=tuple(float(a) for a in ends.apogees[:hops, i]),
-                bounces=tuple(ends.landings[k].position[:, i] for k in range(hops - 1)),
-                incidences=tuple(unit(ends.landings[k].direction[:, i]) for k in range(hops - 1)),
-                miss=float(miss[i]),
-                spreading=float(spreading[i]),
-                # range falls with the zenith angle: the high ray
-                high=not bool(search.rising[i]),
-                tracks=tuple(ends.landings[k].tracks[i] for k in range(hops)),
-            )
-        )
+    return ends, gap, (places[:, 1:] - places[:, :1]) / _BESIDE_STEP
+
+
+def _area(slope: FloatArray) -> FloatArray:
+    """Determinant of the slopes of the landing place."""
+    return np.asarray(slope[0, 0] * slope[1, 1] - slope[0, 1] * slope[1, 0])
+
+
+def _stepped(search: _Search, gap: FloatArray, slope: FloatArray) -> tuple[_Search, BoolArray]:
+    """Candidates after one step of Newton's method, and which of them it carried too far."""
     with np.errstate(invalid="ignore", divide="ignore"):
         move = -np.stack(
             [
-                (slope[1, 1] * gap[0] - slope[0, 1] * gap[1]) / area,
-                (slope[0, 0] * gap[1] - slope[1, 0] * gap[0]) / area,
+                (slope[1, 1] * gap[0] - slope[0, 1] * gap[1]) / _area(slope),
+                (slope[0, 0] * gap[1] - slope[1, 0] * gap[0]) / _area(slope),
             ]
         )
-    again = ~arrived & (np.hypot(*move) < 0.02)  # False where something did not land
-    search.w = search.w + np.where(again, move, 0.0)
-    return rays, search.take(again)
+    # False where something did not land.
+    good = np.hypot(*move) < _LONGEST_MOVE
+    moved = search.take(good)
+    moved.w = moved.w + move[:, good]
+    return moved, ~good
+
+
+def _fine_passes(
+    search: _Search, link: Link, specs: Specs, medium: Medium, field: MagneticField | None
+) -> tuple[list[HomedRay], BoolArray]:
+    """Trace candidates finely until they come down at the receiver.
+
+    Returns the rays, and which candidates did not become one.
+    """
+    rays: list[HomedRay] = []
+    pending = np.arange(search.spec.size)
+    left = np.ones(search.spec.size, dtype=bool)
+    for _ in range(_MOST_PASSES):
+        if pending.size == 0:
+            break
+        ends, gap, slope = _probe(
+            search, link, specs, medium, field, tolerance=HOMED_TOLERANCE, keep_tracks=True
+        )
+        miss = np.hypot(*gap)
+        arrived = miss <= LARGEST_MISS  # False where the ray did not land
+        size = np.sinc(np.hypot(*search.w) / np.pi)
+        spreading = np.abs(_area(slope)) / np.maximum(size, 1e-6)
+        for i in np.flatnonzero(arrived):
+            hops = int(specs.hops[search.spec[i]])
+            before = ends.landings[: hops - 1]
+            rays.append(
+                HomedRay(
+                    spec=int(search.spec[i]),
+                    zenith_vector=search.w[:, i],
+                    launch=link.launch(search.w[:, [i]])[:, 0],
+                    arrival=unit(ends.direction[:, i]),
+                    group_path=float(ends.group_path[i]),
+                    phase_path=float(ends.phase_path[i]),
+                    apogees=tuple(float(a) for a in ends.apogees[:hops, i]),
+                    bounces=tuple(e.position[:, i] for e in before),
+                    incidences=tuple(unit(e.direction[:, i]) for e in before),
+                    miss=float(miss[i]),
+                    spreading=float(spreading[i]),
+                    # range falls with the zenith angle: the high ray
+                    high=not bool(search.rising[i]),
+                    tracks=tuple(e.tracks[i] for e in ends.landings[:hops]),
+                )
+            )
+        left[pending[arrived]] = False
+        search, far = _stepped(search.take(~arrived), gap[:, ~arrived], slope[..., ~arrived])
+        pending = pending[~arrived][~far]
+    return rays, left
 
 
 def _converged(
