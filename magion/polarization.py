@@ -171,9 +171,9 @@ def axial_ratio(field: ComplexArray) -> FloatArray:
     """
     i, q, u, v = stokes(field)
     flat = np.hypot(q, u)
-    with np.errstate(divide="ignore", invalid="ignore"):
+    with np.errstate(divide="ignore", invalid="ignore", over="ignore"):
         # tan of the ellipticity angle, (I − sqrt(Q²+U²)) / |V|, without cancellation
-        return np.asarray((i + flat) / np.abs(v))
+        return np.maximum((i + flat) / np.abs(v), 1.0)
 
 
 def axial_ratio_db(field: ComplexArray) -> FloatArray:

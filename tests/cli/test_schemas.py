@@ -19,7 +19,7 @@ import numpy as np
 import pytest
 from click.testing import CliRunner
 
-from magion.answers import path as records
+from magion.answers import records
 from magion.answers.point import FieldAnswer, OneWave, WaveAnswer
 from magion.cli import main
 from magion.formats.profile import read_profile
