@@ -173,7 +173,7 @@ def axial_ratio(field: ComplexArray) -> FloatArray:
     flat = np.hypot(q, u)
     with np.errstate(divide="ignore", invalid="ignore", over="ignore"):
         # tan of the ellipticity angle, (I − sqrt(Q²+U²)) / |V|, without cancellation
-        return np.maximum((i + flat) / np.abs(v), 1.0)
+        return np.asarray(np.maximum((i + flat) / np.abs(v), 1.0))
 
 
 def axial_ratio_db(field: ComplexArray) -> FloatArray:
