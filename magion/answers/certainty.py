@@ -133,7 +133,9 @@ def least_fof2(frequency: float, muf: float, fof2: float, gyro: float, ordinary:
 
 
 def _above(level: float, mean: float, deviation: float) -> float:
-    """Probability that a normal variable lies above a level."""
+    """Probability that foF2, normal but never negative, lies above a level."""
+    if level <= 0.0:
+        return 1.0
     if not math.isfinite(level):
         return 0.0
     if deviation <= 0.0:
@@ -238,6 +240,7 @@ def changes(
     mufs: PathMufs,
     frequency: float,
     relative_deviation: FloatArray,
+    gyro_limit: float = 0.0,
 ) -> tuple[Change, ...]:
     """Times at which a wave comes or goes, from its MUF through the day.
 
@@ -251,16 +254,21 @@ def changes(
         Operating frequency [Hz].
     relative_deviation : ndarray, shape (hours,)
         Standard deviation of foF2 over foF2 [1].
+    gyro_limit : float
+        Frequency up to which the extraordinary wave is not turned back [Hz].
 
     Returns
     -------
     tuple of Change
         In order of time. The plus-minus is the deviation of the MUF over its
-        slope in time.
+        slope in time; it is left out where E decides, or foF2 hardly moves.
     """
     start = moments[0]
     hours = np.array([(m - start).total_seconds() / 3600.0 for m in moments])
     values = np.where(np.isfinite(mufs.any_layer), mufs.any_layer, 0.0)
+    if frequency <= gyro_limit:
+        values[1] = 0.0
+    by_f = np.isclose(mufs.any_layer, mufs.f_region, rtol=2e-3)
     events: list[tuple[float, int, bool, float | None]] = []
     for wave in range(2):
         gap = values[wave] - frequency
@@ -269,12 +277,13 @@ def changes(
             step = hours[i + 1] - hours[i]
             slope = abs(gap[i + 1] - gap[i]) / step
             doubt = float(relative_deviation[i]) * frequency / slope * 60.0
+            told = doubt <= _LONGEST_DOUBT and bool(by_f[wave, i] and by_f[wave, i + 1])
             events.append(
                 (
                     float(hours[i] + share * step),
                     wave,
                     bool(gap[i + 1] >= 0.0),
-                    doubt if doubt <= _LONGEST_DOUBT else None,
+                    doubt if told else None,
                 )
             )
     present = [bool(values[0, 0] >= frequency), bool(values[1, 0] >= frequency)]

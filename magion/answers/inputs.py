@@ -155,7 +155,8 @@ def instant(when: datetime | None) -> datetime:
     """
     from magion.field import require_date
 
-    return require_date(datetime.now(UTC) if when is None else as_utc(when))
+    now = datetime.now(UTC).replace(microsecond=0)
+    return require_date(now if when is None else as_utc(when))
 
 
 def solar_flux(given: IonosphereInput) -> tuple[float, str | None]:

@@ -198,8 +198,7 @@ def find_modes(scene: Scene, frequency: float, modes: tuple[Mode, ...], hour: in
             _specs(frequency, hour, several),
             scene.medium,
             scene.field,
-            default_zenith_angles(2.5),
-            refinements=0,
+            default_zenith_angles(2.0),
         )
     specs = _specs(frequency, hour, wanted)
     homed = home(scene.link, specs, scene.medium, scene.field, found)

@@ -25,7 +25,6 @@ from magion.answers.modes import (
     ModesFound,
     doppler_of_layers,
     find_modes,
-    hop_counts,
 )
 from magion.answers.records import (
     SCHEMA,
@@ -60,7 +59,7 @@ from magion.polarization import (
 from magion.rays.exit import PlasmaPoint
 from magion.rays.fans import Fan
 from magion.rays.link import Link, link_between
-from magion.rays.muf import branches, skip_distance
+from magion.rays.muf import LONGEST_HOP, branches, skip_distance
 from magion.waves import (
     MODES,
     Mode,
@@ -136,7 +135,7 @@ def answer_path(
     mid_latitude, mid_longitude = link.point(0.5)
     at_peak = field_at(mid_latitude, mid_longitude, overhead.hmf2, moment)
     gyro = float(gyrofrequency(flux_density(at_peak)))
-    day = _changes_of_day(link, moment, frequency, given) if with_changes else None
+    day = _changes_of_day(scene, moment, frequency, given) if with_changes else None
     return PathAnswer(
         schema=SCHEMA,
         transmitter=_end(transmitter),
@@ -154,7 +153,7 @@ def answer_path(
             fof2_error_mhz=None if overhead.fof2_error is None else overhead.fof2_error / 1e6,
         ),
         waves=pair,
-        advice=_advice(scene, frequency, pair, mufs, gyro, day),
+        advice=_advice(scene, frequency, pair, mufs, gyro, day, with_changes and day is None),
     )
 
 
@@ -361,8 +360,11 @@ def _reason(scene: Scene, frequency: float, fan: Fan) -> str:
             f"{skip / 1e3:.0f} km (skip distance)"
         )
     if distance > reach:
-        return f"one hop reaches {reach / 1e3:.0f} km at most, and several do not come down here"
-    return "no ray of this wave comes down at this distance, between those of two layers"
+        return (
+            f"one hop reaches {reach / 1e3:.0f} km at most, and none of the rays of several hops "
+            "that were traced comes down here"
+        )
+    return "none of its rays comes down here: the path lies in a gap between those of two layers"
 
 
 def _turning_point(scene: Scene, frequency: float, mode: Mode) -> IndexAtApex | None:
@@ -412,20 +414,25 @@ def _doppler_shifts(
 
 
 def _changes_of_day(
-    link: Link, moment: datetime, frequency: float, given: IonosphereInput
-) -> tuple[Change, ...]:
-    """Times of the UTC day at which a wave comes or goes."""
+    scene: Scene, moment: datetime, frequency: float, given: IonosphereInput
+) -> tuple[Change, ...] | None:
+    """Times of the UTC day at which a wave comes or goes; None where they cannot be told."""
+    link = scene.link
+    if link.distance > LONGEST_HOP or given.profile is not None:
+        return None
     midnight = moment.replace(hour=0, minute=0, second=0, microsecond=0)
     moments = [midnight + timedelta(minutes=30 * i) for i in range(48)]
     if given.readings is not None:
         covered = given.readings.covered
         moments = [m for m in moments if any(a <= m <= b for a, b in covered)]
-    if len(moments) < 2 or given.profile is not None:
-        return ()
-    scene = scene_of(link, moments, given)
-    mufs = path_mufs(scene, hop_counts(link.distance))
-    relative = np.array([(o.fof2_error or 0.0) / o.fof2 for o in scene.overheads])
-    return changes(moments, mufs, frequency, relative)
+    if len(moments) < 2:
+        return None
+    # Typed values are of this moment: the day is scaled as they ask now.
+    ratios = None if given.readings is not None else scene.overheads[0].ratios
+    day = scene_of(link, moments, given, ratios)
+    mufs = path_mufs(day, (1,))
+    relative = np.array([(o.fof2_error or 0.0) / o.fof2 for o in day.overheads])
+    return changes(moments, mufs, frequency, relative, scene.gyro_limit)
 
 
 def _advice(
@@ -435,12 +442,22 @@ def _advice(
     mufs: PathMufs,
     gyro: float,
     day: tuple[Change, ...] | None,
+    no_day: bool,
 ) -> Advice:
     ordinary, extraordinary = waves
     state = state_of(ordinary.arrives, extraordinary.arrives)
     taken = _taken(waves)
     chances = _probabilities(scene, frequency, waves, mufs, gyro)
     fading = _fading(waves)
+    sure = None if chances is None else confidence_of(chances, state)
+    caveats = _caveats(scene, frequency, waves, chances, state)
+    if no_day:
+        caveats += (
+            "Times of change are given for one hop (up to 3900 km) and for an ionosphere that "
+            "is known through the day: not here.",
+        )
+    if day is not None and scene.overheads[0].ratios != (1.0, 1.0, 1.0):
+        caveats += ("For the times of change the whole day is scaled as the values of now ask.",)
     return Advice(
         state=state,
         state_probabilities=chances,
@@ -452,9 +469,9 @@ def _advice(
         rejection_db=None,
         separation_db=None,
         limited_by=None,
-        headline=_headline(taken, waves),
-        confidence=None if chances is None else confidence_of(chances, state),
-        caveats=_caveats(scene, frequency, waves, chances, state),
+        headline=_headline(taken, waves, sure),
+        confidence=sure,
+        caveats=caveats,
         fading=fading,
         changes=day,
     )
@@ -483,6 +500,10 @@ def _probabilities(
     for i, wave in enumerate(waves):
         rays = (wave, *wave.rays) if wave.arrives else ()
         muf = float(mufs.f_region[i, 0])
+        if wave.arrives:
+            muf = max(muf, frequency) if math.isfinite(muf) else frequency
+        elif muf >= frequency:
+            muf = math.nan  # no ray comes down here for another reason
         absorbed = not wave.arrives and wave.absorption_db is not None
         passed = wave.wave is Mode.EXTRAORDINARY and frequency <= scene.gyro_limit
         if any(r.layer in ("E", "Es") for r in rays):
@@ -502,19 +523,31 @@ def _fading(waves: tuple[WaveOnPath, WaveOnPath]) -> Fading | None:
     return Fading(doppler_split_hz=split, period_s=1.0 / abs(split) if split else None)
 
 
-def _headline(taken: WaveOnPath | None, waves: tuple[WaveOnPath, WaveOnPath]) -> str:
+def _headline(
+    taken: WaveOnPath | None, waves: tuple[WaveOnPath, WaveOnPath], sure: str | None
+) -> str:
+    if sure == "cannot_tell" and (taken is None or taken.receive_hand is None):
+        return "Too uncertain to tell: perhaps a wave arrives, but none in the central case."
     if taken is None or taken.receive_hand is None or taken.transmit_hand is None:
         return "Neither wave arrives: no hand will help on this frequency now."
     other = waves[1] if taken is waves[0] else waves[0]
     company = "both waves arrive" if other.arrives else "the other wave does not arrive"
     if other.arrives and other.level_db is not None and taken.level_db is not None:
         lead = taken.level_db - other.level_db
-        if abs(lead) >= 1.0:
-            company = f"the other wave is {abs(lead):.0f} dB {'weaker' if lead > 0 else 'stronger'}"
+        company = (
+            f"the other wave is {lead:.0f} dB weaker"
+            if lead >= 3.0
+            else ("both arrive, within 3 dB")
+        )
     if taken.shape is Shape.LINEAR:
         return (
             f"{taken.wave.value.capitalize()} wave, nearly linear: use a single wire along "
             f"{taken.major_axis_bearing_deg:.0f}° true ({company})."
+        )
+    if sure == "cannot_tell":
+        return (
+            f"Too uncertain to tell which waves arrive. If the {taken.wave.value} does: receive "
+            f"{taken.receive_hand.value}, transmit {taken.transmit_hand.value} to answer on it."
         )
     return (
         f"Receive {taken.receive_hand.value}: {taken.wave.value} wave; to answer on it transmit "
@@ -551,6 +584,11 @@ def _caveats(
             caveats.append(
                 f"On its way out the {wave.wave.value} wave feeds the other one "
                 f"({wave.other_wave_db:.0f} dB): no hand is pure here."
+            )
+        if wave.arrives and wave.launch and wave.launch.elevation_deg < 3.0:
+            caveats.append(
+                f"The {wave.wave.value} wave leaves at {wave.launch.elevation_deg:.1f}° elevation: "
+                "hills and the ground decide whether it gets away."
             )
         if wave.arrives and (wave.hops or 1) > 1:
             caveats.append(

@@ -10,6 +10,7 @@ from magion.answers.inputs import IonosphereInput, solar_flux
 from magion.arrays import FloatArray
 from magion.constants import EARTH_RADIUS
 from magion.field import FieldFit, fit_field, flux_density, gyrofrequency
+from magion.geometry import great_circle
 from magion.ionosphere.along import Stations, path_ionosphere, stations_along
 from magion.ionosphere.layers import LayerParameters, frequency_of_density
 from magion.ionosphere.medium import Medium
@@ -41,6 +42,8 @@ class Overhead:
         Where the ionosphere comes from.
     caveats : tuple of str
         What the user should know about it.
+    ratios : tuple of float
+        foF2, height of F2 above 100 km, and foE over the climatology's [1].
     """
 
     profiles: VerticalProfiles
@@ -52,6 +55,7 @@ class Overhead:
     error_source: str | None
     source: str
     caveats: tuple[str, ...]
+    ratios: tuple[float, float, float] = (1.0, 1.0, 1.0)
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -85,7 +89,12 @@ class Scene:
     stations: Stations | None
 
 
-def scene_of(link: Link, moments: Sequence[datetime], given: IonosphereInput) -> Scene:
+def scene_of(
+    link: Link,
+    moments: Sequence[datetime],
+    given: IonosphereInput,
+    ratios: tuple[float, float, float] | None = None,
+) -> Scene:
     """Ionosphere and field of a path at some instants of one UTC day.
 
     Parameters
@@ -96,6 +105,9 @@ def scene_of(link: Link, moments: Sequence[datetime], given: IonosphereInput) ->
         The instants, UTC.
     given : IonosphereInput
         What the user knows of the ionosphere.
+    ratios : tuple of float, optional
+        Scale the climatology by these (see :class:`Overhead`) in place of the
+        typed values [1].
 
     Returns
     -------
@@ -153,11 +165,12 @@ def scene_of(link: Link, moments: Sequence[datetime], given: IonosphereInput) ->
         base = everywhere.at(where)
         source = base.source + (" (assumed)" if assumed else "")
         known = _known(given, moment)
-        scaled = everywhere.scaled(
-            fof2=1.0 if known.fof2 is None else known.fof2 / float(base.fof2),
-            hmf2=1.0 if known.hmf2 is None else (known.hmf2 - 100e3) / (float(base.hmf2) - 100e3),
-            foe=1.0 if known.foe is None else known.foe / float(base.foe),
+        asked = ratios or (
+            1.0 if known.fof2 is None else known.fof2 / float(base.fof2),
+            1.0 if known.hmf2 is None else (known.hmf2 - 100e3) / (float(base.hmf2) - 100e3),
+            1.0 if known.foe is None else known.foe / float(base.foe),
         )
+        scaled = everywhere.scaled(fof2=asked[0], hmf2=asked[1], foe=asked[2])
         if given.foes_mhz is not None:
             scaled = replace(scaled, foes=given.foes_mhz * 1e6)
         middle = scaled.at(count)
@@ -165,6 +178,14 @@ def scene_of(link: Link, moments: Sequence[datetime], given: IonosphereInput) ->
         if assumed is not None and known.fof2 is not None:
             caveats = ["A solar flux of 120 sfu is assumed for what was not given."]
         caveats += known.caveats
+        if place is not None:
+            away = float(great_circle(place.latitude, place.longitude, *extra[0])[0])
+            if away * EARTH_RADIUS > 500e3:
+                caveats.append(
+                    f"The readings were taken {away * EARTH_RADIUS / 1e3:.0f} km from the "
+                    "midpoint: "
+                    "their ratio to the climatology may not hold here."
+                )
         if float(middle.foe) > float(middle.fof2):
             caveats.append("foE is above foF2: the E region hides the F region from below.")
         spread = _NIGHT_SPREAD if found.zenith[i, count] > np.pi / 2.0 else _DAY_SPREAD
@@ -179,6 +200,7 @@ def scene_of(link: Link, moments: Sequence[datetime], given: IonosphereInput) ->
                 error_source=known.error_source or f"usual day-to-day spread, {100 * spread:.0f} %",
                 source=f"{known.source}; the rest: {source}" if known.source else source,
                 caveats=tuple(caveats),
+                ratios=asked,
             )
         )
         places.append(_first(scaled, count))

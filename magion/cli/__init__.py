@@ -61,6 +61,9 @@ class _OneLine(_Commands):
             raise SystemExit(130) from None
         except BrokenPipeError:
             raise SystemExit(0) from None
+        except OSError as error:
+            click.echo(f"magion: cannot write the answer: {error.strerror}", err=True)
+            raise SystemExit(1) from None
         raise SystemExit(result if isinstance(result, int) else 0)
 
 

@@ -232,5 +232,5 @@ def climate(
         m3000=np.asarray(f2["M3000"]),
         f1_share=smooth_step((np.asarray(f1["P"]) - _MIDDLE_F1) / 0.2 + 0.5),
         zenith=np.radians(zenith_deg),
-        source=f"{MODEL}, solar flux {flux:g}",
+        source=f"{MODEL}, solar flux {flux:.0f}",
     )

@@ -18,7 +18,7 @@ from magion.constants import SPEED_OF_LIGHT
 from magion.rays.exit import RayPlasma
 from magion.waves import MODES, Mode, characteristic_waves, wave_axes
 
-DEEPEST: Final = 60.0
+DEEPEST: Final = 12.0
 """O-X phase from the exit at which the waves are started as separate [rad]."""
 
 
@@ -31,6 +31,31 @@ def _product(matrices: ComplexArray) -> ComplexArray:
         # The waves' losses would run out of range on a long way; only ratios matter.
         matrices = matrices / np.abs(matrices).max(axis=(1, 2), keepdims=True)
     return np.asarray(matrices[0])
+
+
+def _settled(
+    shapes: ComplexArray,
+    index: tuple[ComplexArray, ComplexArray],
+    wavenumber: float,
+    length: FloatArray,
+    mode: Mode,
+) -> ComplexArray:
+    """Parts of both waves at the first point that make one true wave.
+
+    Where the plasma changes slowly a true wave carries a small steady part of
+    the other local one: b' = -i k (n_b - n_a) b - C a with C from the change of
+    the shapes, so b = -C a / (i k (n_b - n_a)) to first order.
+    """
+    own = MODES.index(mode)
+    other = 1 - own
+    change = np.linalg.solve(shapes[0], (shapes[1] - shapes[0]) / length[0])
+    parts = np.zeros(2, dtype=np.complex128)
+    parts[own] = 1.0
+    gap = 1j * wavenumber * (index[other][0] - index[own][0])
+    steady = -change[other, own] / gap if gap != 0.0 else 0.0
+    # Where the two are not parted enough for that, the local wave alone.
+    parts[other] = steady if np.isfinite(steady) and abs(steady) < 0.5 else 0.0
+    return parts
 
 
 def carry(
@@ -73,7 +98,7 @@ def carry(
     for column in range(2):
         spread[:, column, column] = np.exp(-1j * phase[column])
     slabs = shapes[:-1] @ spread @ np.linalg.inv(shapes[:-1])
-    out = _product(slabs) @ shapes[0, :, MODES.index(mode)]
+    out = _product(slabs) @ shapes[0] @ _settled(shapes, waves.index, wavenumber, length, mode)
     return out / np.sqrt(np.sum(np.abs(out) ** 2)), x_end, y_end
 
 

@@ -16,6 +16,8 @@ FAN_TOLERANCE: Final = 5.0
 """Error of position accepted in one step of a fan's ray [m]."""
 
 _JUMP = 12e3
+_JUMP_PER_RADIAN = 10e3 * 180.0 / np.pi
+_NEAR_SKIP = 80e3
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -71,10 +73,11 @@ class Fan:
         -------
         ndarray of bool, shape (n - 1,)
             True where one ray escapes and the next does not, or where they turn
-            at heights more than 12 km apart [1].
+            at heights further apart than within one layer (12 km, and 10 km a degree) [1].
         """
         landed = self.landed
-        jump = np.abs(np.diff(self.apogee)) > _JUMP
+        usual = _JUMP + _JUMP_PER_RADIAN * np.diff(self.zenith_angle)
+        jump = np.abs(np.diff(self.apogee)) > usual
         return np.asarray((landed[1:] != landed[:-1]) | (landed[1:] & landed[:-1] & jump))
 
 
@@ -157,7 +160,8 @@ def fans(
     zenith_angles : ndarray, optional
         Launch angles [rad].
     refinements : int
-        How often the gaps at which a layer gives out are divided by seven [1].
+        How often the gaps at which a layer gives out, or in which the skip
+        distance comes near the receiver's, are divided by seven [1].
     tolerance : float
         Error of position accepted in one step [m].
 
@@ -176,7 +180,7 @@ def fans(
             angle = np.concatenate(wanted)
             new = _fan_rays(link, angle, index, specs, medium, field, tolerance)
             found = new if round_ == 0 else [f.merged(n) for f, n in zip(found, new, strict=True)]
-        wanted = [_gaps(fan) for fan in found]
+        wanted = [_gaps(fan, link.distance) for fan in found]
     return found
 
 
@@ -201,9 +205,42 @@ def _fan_rays(
     ]
 
 
-def _gaps(fan: Fan) -> FloatArray:
-    """New launch angles inside the gaps in which a layer gives out."""
-    gap = np.flatnonzero(fan.breaks())
+def _gaps(fan: Fan, distance: float) -> FloatArray:
+    """New launch angles where a layer gives out, and about a skip distance near the receiver's."""
+    psi, breaks = fan.zenith_angle, fan.breaks()
+    chosen = breaks.copy()
+    gap = fan.along - distance
+    lowest = (gap[1:-1] <= gap[:-2]) & (gap[1:-1] <= gap[2:]) & ~breaks[1:] & ~breaks[:-1]
+    lowest &= np.abs(gap[1:-1]) < _NEAR_SKIP
+    chosen[:-1] |= lowest
+    chosen[1:] |= lowest
+    index = np.flatnonzero(chosen)
     share = np.arange(1, 7) / 7.0
-    low, high = fan.zenith_angle[gap], fan.zenith_angle[gap + 1]
+    low, high = psi[index], psi[index + 1]
     return np.asarray((low[:, None] + (high - low)[:, None] * share).ravel())
+
+
+def vertex_of(x: FloatArray, y: FloatArray) -> tuple[float, float, float] | None:
+    """Lowest point of the parabola through three points.
+
+    Parameters
+    ----------
+    x, y : ndarray, shape (3,)
+        The points, x rising.
+
+    Returns
+    -------
+    tuple of float or None
+        Place and value of the lowest point, and the factor of the square;
+        None if the parabola has no lowest point.
+    """
+    left, right = (y[1] - y[0]) / (x[1] - x[0]), (y[2] - y[1]) / (x[2] - x[1])
+    bend = (right - left) / (x[2] - x[0])
+    if not bend > 0.0:
+        return None
+    slope = left + bend * (x[1] - x[0])  # at the middle point
+    return (
+        float(x[1] - slope / (2.0 * bend)),
+        float(y[1] - slope * slope / (4.0 * bend)),
+        float(bend),
+    )

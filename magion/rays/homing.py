@@ -23,7 +23,7 @@ from magion.field import MagneticField
 from magion.ionosphere.medium import Medium
 from magion.rays.batch import Track
 from magion.rays.chain import Chain, Specs
-from magion.rays.fans import Fan, fans, shoot
+from magion.rays.fans import Fan, fans, shoot, vertex_of
 from magion.rays.link import Link
 
 LARGEST_MISS: Final = 100.0
@@ -112,27 +112,41 @@ class _Search:
 def _candidates(link: Link, found: list[Fan]) -> _Search:
     rows = []
     distance = link.distance
+
+    def add(spec: int, fan: Fan, start: float, slope: float, low: float, high: float) -> None:
+        if abs(slope) > STEEPEST:
+            return
+        # Turning the azimuth swings the landing place about the transmitter.
+        swing = (
+            EARTH_RADIUS * math.sin(distance / EARTH_RADIUS) / math.sin(start)
+            if distance > 30e3
+            else slope
+        )
+        swing *= math.sin(start) / start if start else 1.0
+        across = float(np.interp(start, fan.zenith_angle, fan.across))
+        if math.isfinite(across) and swing:
+            rows.append((spec, start, -across / swing, low, high, slope > 0.0, slope, swing))
+
     for spec, fan in enumerate(found):
-        gap = fan.along - distance
-        crossing = np.flatnonzero(
-            fan.landed[1:] & fan.landed[:-1] & (gap[1:] * gap[:-1] <= 0.0) & (gap[1:] != 0.0)
-            & ~fan.breaks()
-        )  # fmt: skip
-        for i in crossing:
-            a0, a1 = fan.zenith_angle[i], fan.zenith_angle[i + 1]
-            slope = (gap[i + 1] - gap[i]) / (a1 - a0)
-            if abs(slope) > STEEPEST:
+        psi, gap, breaks = fan.zenith_angle, fan.along - distance, fan.breaks()
+        whole = fan.landed[1:] & fan.landed[:-1] & ~breaks
+        crossing = whole & (gap[1:] * gap[:-1] <= 0.0) & (gap[1:] != 0.0)
+        for i in np.flatnonzero(crossing):
+            slope = (gap[i + 1] - gap[i]) / (psi[i + 1] - psi[i])
+            add(spec, fan, psi[i] - gap[i] / slope, slope, psi[i], psi[i + 1])
+        # Just below the MUF the low and the high ray stand between two rays of the fan.
+        inner = whole[1:] & whole[:-1] & (gap[1:-1] > 0.0)
+        for i in np.flatnonzero(inner & (gap[1:-1] < gap[:-2]) & (gap[1:-1] <= gap[2:])) + 1:
+            vertex = vertex_of(psi[i - 1 : i + 2], gap[i - 1 : i + 2])
+            if vertex is None or vertex[1] >= 0.0:
                 continue
-            start = a0 - gap[i] / slope
-            # Turning the azimuth swings the landing place about the transmitter.
-            swing = (
-                EARTH_RADIUS * math.sin(distance / EARTH_RADIUS) / math.sin(start)
-                if distance > 30e3
-                else slope
-            )
-            across = np.interp(start, fan.zenith_angle[i : i + 2], fan.across[i : i + 2])
-            swing *= math.sin(start) / start if start else 1.0
-            rows.append((spec, start, -across / swing, a0, a1, gap[i + 1] > gap[i], slope, swing))
+            place, depth, bend = vertex
+            away = math.sqrt(-depth / bend)
+            for side in (-1.0, 1.0):
+                add(
+                    spec, fan, place + side * away, 2.0 * bend * side * away,
+                    min(place, place + side * 2.0 * away), max(place, place + side * 2.0 * away),
+                )  # fmt: skip
     table = np.array(rows, dtype=np.float64).reshape(-1, 8)
     jacobian = np.zeros((2, 2, table.shape[0]))
     jacobian[0, 0], jacobian[1, 1] = table[:, 6], table[:, 7]

@@ -16,7 +16,7 @@ from magion.constants import EARTH_RADIUS
 from magion.field import MagneticField
 from magion.ionosphere.medium import Medium
 from magion.rays.chain import Specs
-from magion.rays.fans import Fan, default_zenith_angles, fans
+from magion.rays.fans import Fan, default_zenith_angles, fans, vertex_of
 from magion.rays.link import Link
 
 LONGEST_HOP: Final = 3900e3
@@ -28,6 +28,7 @@ F_REGION: Final = 130e3
 _RAYS = 18
 _FIRST = (0.7, 0.85, 0.97, 1.08, 1.22, 1.45)
 _ROUNDS, _ROUNDS_NEAR = 2, 4
+_MOST_SHIFTS = 3
 _SLACK = 0.5e3
 _TOLERANCE = 30.0
 
@@ -94,14 +95,8 @@ def branches(fan: Fan) -> list[Branch]:
         i = int(np.argmin(along))
         least = float(along[i])
         if 0 < i < run.size - 1:
-            # vertex of the parabola through three points
-            x0, x1, x2 = fan.zenith_angle[run[i - 1 : i + 2]]
-            y0, y1, y2 = along[i - 1 : i + 2]
-            left, right = (y1 - y0) / (x1 - x0), (y2 - y1) / (x2 - x1)
-            bend = (right - left) / (x2 - x0)
-            if bend > 0.0:
-                slope = left + bend * (x1 - x0)  # at x1
-                least = min(least, float(y1 - slope * slope / (4.0 * bend)))
+            vertex = vertex_of(fan.zenith_angle[run[i - 1 : i + 2]], along[i - 1 : i + 2])
+            least = least if vertex is None else min(least, vertex[1])
         found.append(
             Branch(least=least, greatest=float(along.max()), apogee=float(fan.apogee[run[i]]))
         )
@@ -207,7 +202,7 @@ def maximum_usable_frequencies(
     angles = default_zenith_angles(2.0) if wide else _angles(link, hops)
     count = guess.size
 
-    def margins(trial: FloatArray) -> FloatArray:
+    def margins(trial: FloatArray, refinements: int) -> FloatArray:
         """Margins of trial frequencies (n, k): shape (2, n, k), any layer and F."""
         out = np.full((2, *trial.shape), -np.inf)
         good = np.isfinite(trial)
@@ -220,25 +215,32 @@ def maximum_usable_frequencies(
                 hops=np.full(total, hops, dtype=np.intp),
                 extraordinary=np.repeat(extraordinary[owner][None], hops, axis=0),
             )
-            found = fans(link, specs, medium, field, angles, refinements=0, tolerance=_TOLERANCE)
+            found = fans(
+                link, specs, medium, field, angles, refinements=refinements, tolerance=_TOLERANCE
+            )
             out[:, good] = np.array([_margins_of(fan, link.distance) for fan in found]).T
         return out
 
     brackets = [_Bracket(count), _Bracket(count)]
     near = link.distance < 300e3 * hops
     trial = guess[:, None] * np.array(_FIRST)
-    for _ in range(3):
-        both = margins(trial)
+    bottom, top = trial[:, 0], trial[:, -1]
+    span = _FIRST[-1] / _FIRST[0]
+    for _ in range(_MOST_SHIFTS):
+        both = margins(trial, 0)
         for bracket, values in zip(brackets, both, strict=True):
             bracket.narrow(trial, values)
-        # The guess was too high where nothing arrived, too low where everything did.
-        lower = np.isnan(brackets[0].low)[:, None]
-        higher = np.isnan(brackets[0].high)[:, None] & ~lower
+        # The guess was too high where nothing arrived (by F, at least), too low
+        # where everything did.
+        lower = np.isnan(brackets[0].low) | np.isnan(brackets[1].low)
+        higher = ~lower & np.isnan(brackets[0].high)
         if not (lower.any() or higher.any()):
             break
-        step = np.where(lower, _FIRST[0] / _FIRST[-1], np.where(higher, 1.0, np.nan))
-        shift = _FIRST[-1] / _FIRST[0]
-        trial = trial * step * np.where(higher, shift, 1.0)
+        trial = np.full_like(trial, np.nan)
+        trial[lower] = (bottom[lower] / span)[:, None] * np.array(_FIRST) / _FIRST[0]
+        trial[higher] = top[higher][:, None] * np.array(_FIRST) / _FIRST[0]
+        bottom = np.where(lower, bottom / span, bottom)
+        top = np.where(higher, top * span, top)
     for _ in range(_ROUNDS_NEAR if near else _ROUNDS):
         trials = [b.inner(near) for b in brackets]
         # Where F alone decides, both brackets are one and are traced once.
@@ -246,11 +248,11 @@ def maximum_usable_frequencies(
         same |= np.isnan(brackets[1].low)
         trials[1] = np.where(same[:, None], np.nan, trials[1])
         width = trials[0].shape[1]
-        found = margins(np.concatenate(trials, axis=1))
+        found = margins(np.concatenate(trials, axis=1), 1)
         second = np.where(same[:, None], found[1, :, :width], found[1, :, width:])
         brackets[0].narrow(trials[0], found[0, :, :width])
         brackets[1].narrow(np.where(same[:, None], trials[0], trials[1]), second)
-    return Mufs(any_layer=brackets[0].value(), f_region=brackets[1].value())
+    return Mufs(any_layer=brackets[0].value(near), f_region=brackets[1].value(near))
 
 
 class _Bracket:
@@ -269,7 +271,7 @@ class _Bracket:
         the bracket is quartered; else it is close to linear, and the trials
         stand around where it vanishes.
         """
-        middle = self.value()
+        middle = self.value(near)
         steps = np.array([0.25, 0.5, 0.75])
         quarters = self.low[:, None] + (self.high - self.low)[:, None] * steps
         if near:
@@ -300,12 +302,12 @@ class _Bracket:
                 above = known[k + 1]
                 self.high[i], self.high_margin[i] = ladder[i, above], found[i, above]
 
-    def value(self) -> FloatArray:
+    def value(self, near: bool) -> FloatArray:
         """Where the margin vanishes, within the last bracket."""
         with np.errstate(invalid="ignore", divide="ignore"):
             share = self.low_margin / (self.low_margin - self.high_margin)
-        # Linear where both ends have a margin of like size; else the middle.
-        like = (share > 0.02) & (share < 0.98)
-        share = np.where(like, share, 0.5)
+        # Linear where both ends have a margin; at the corner near the vertical, the middle.
+        known = (share >= 0.0) & (share <= 1.0) & np.isfinite(self.high_margin)
+        share = np.where(known & (not near), share, 0.5)
         middle = self.low + (self.high - self.low) * share
         return np.asarray(np.where(np.isfinite(self.high), middle, self.low))

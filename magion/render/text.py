@@ -1,5 +1,6 @@
 """Records as text: 80 columns, black on white, rounded to what the physics supports."""
 
+import re
 import textwrap
 from collections.abc import Callable
 
@@ -10,6 +11,7 @@ from magion.polarization import Hand, hand_in_words
 WIDTH = 80
 _LABEL = 26
 _COLUMN = 27
+_HELD = "\N{NO-BREAK SPACE}"
 
 _ASCII = str.maketrans(
     {
@@ -55,9 +57,12 @@ def for_encoding(text: str, encoding: str | None) -> str:
 
 
 def _wrapped(text: str, indent: str = "  ", first: str | None = None) -> list[str]:
-    return textwrap.wrap(
-        text, WIDTH, initial_indent=indent if first is None else first, subsequent_indent=indent
+    # A number and its unit stay together.
+    kept = re.sub(r"(?<=\d) (?=(?:%|MHz|km|dB|nT|Hz|min)\b|%)", _HELD, text)
+    lines = textwrap.wrap(
+        kept, WIDTH, initial_indent=indent if first is None else first, subsequent_indent=indent
     )
+    return [line.replace(_HELD, " ") for line in lines]
 
 
 def coordinates(latitude_deg: float, longitude_deg: float) -> str:
@@ -84,7 +89,9 @@ def _end(end: End) -> str:
 
 
 def _pair(label: str, cells: list[str]) -> str:
-    return (f"  {label:<{_LABEL - 2}}" + "".join(f"{c:<{_COLUMN}}" for c in cells)).rstrip()
+    wide = _COLUMN - 1
+    fitted = [c if len(c) <= wide else c[: wide - 1] + "…" for c in cells]
+    return (f"  {label:<{_LABEL - 2}}" + "".join(f"{c:<{_COLUMN}}" for c in fitted)).rstrip()
 
 
 def path_text(answer: PathAnswer) -> str:
@@ -143,7 +150,7 @@ def _wave_rows(answer: PathAnswer) -> list[str]:
         return None if value is None else f"{value:{form}}{unit}"
 
     rows: list[str] = []
-    rows += row("arrives", lambda w: f"yes, as {w.label}" if w.arrives else "no")
+    rows += row("arrives", lambda w: f"yes, as {_marked(w)}" if w.arrives else "no")
     rows += row("receive hand (IEEE)", lambda w: _name(w.receive_hand))
     rows += row("  turns, looking up", lambda w: words(w.receive_hand, "looking_up"))
     rows += row("  turns, on the map", lambda w: words(w.receive_hand, "on_the_map"))
@@ -263,7 +270,8 @@ def _why(answer: PathAnswer) -> list[str]:
     field, sky = answer.field, answer.ionosphere
     lines += _wrapped(
         f"Field at the midpoint, {field.height_km:.0f} km: {field.flux_density_nt:.0f} nT, dip "
-        f"{field.dip_deg:.1f}°, declination {field.declination_deg:.1f}°, gyrofrequency "
+        f"{field.dip_deg:.1f}°, declination {round(field.declination_deg, 1) + 0.0:.1f}°, "
+        f"gyrofrequency "
         f"{field.gyrofrequency_mhz:.3f} MHz ({field.model})."
     )
     e_region = "" if sky.foe_mhz is None else f", foE {sky.foe_mhz:.2f} MHz"

@@ -372,23 +372,13 @@ def test_limiting_place_gives_the_axial_ratio(day, mode):
     assert_ratios_agree(*ratio_errors(day, mode, at_exit))
 
 
-HARD_START = pytest.mark.xfail(
-    strict=True,
-    reason="carry() starts with the local wave alone 60 rad (or the apex) before the exit, where "
-    "the plasma already changes. A true wave has there a first-order part of the other one; the "
-    "part left out runs free, and where the extraordinary wave is absorbed by 40 dB more than the "
-    "ordinary, it grows beside it to -16 dB. Cure: start as the eigenvector of the coupled "
-    "equations, and start nearer to the exit (12 rad)",
-)
-
-
 @pytest.mark.parametrize(
     ("day", "mode"),
     [
         (True, MODES[0]),
-        pytest.param(True, MODES[1], marks=HARD_START),
+        pytest.param(True, MODES[1]),
         (False, MODES[0]),
-        pytest.param(False, MODES[1], marks=HARD_START),
+        pytest.param(False, MODES[1]),
     ],
 )
 def test_carried_wave_has_the_axial_ratio_of_the_limiting_place(day, mode):
@@ -398,7 +388,6 @@ def test_carried_wave_has_the_axial_ratio_of_the_limiting_place(day, mode):
     assert_ratios_agree(*ratio_errors(day, mode, at_exit))
 
 
-@HARD_START
 def test_share_does_not_hang_on_where_the_waves_are_started():
     worst = 0.0
     for f, mode, plasma, limiting in ways_out(True):

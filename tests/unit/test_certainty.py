@@ -109,11 +109,6 @@ def test_wave_that_e_carries_does_not_hang_on_fof2(deviation):
         assert found.none == pytest.approx(0.0, abs=1e-8)
 
 
-@pytest.mark.xfail(
-    strict=True,
-    reason="a wave that is there anyway is given the level 0, and a wide normal distribution of "
-    "foF2 has a tail below 0: with 2 ± 2 MHz it takes 16 % from a wave that E carries",
-)
 def test_wave_that_e_carries_is_sure_even_with_a_wide_doubt():
     found = probabilities((0.0, 0.0), 2.0, 2.0)
     assert found.both == 1.0
