@@ -17,7 +17,8 @@ FAN_TOLERANCE: Final = 5.0
 
 _JUMP = 12e3
 _JUMP_PER_RADIAN = 10e3 * 180.0 / np.pi
-_NEAR_SKIP = 80e3
+_NEAR_SKIP = 150e3
+_CLOSE = np.radians(1.0)
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -232,11 +233,13 @@ def vertex_of(x: FloatArray, y: FloatArray) -> tuple[float, float, float] | None
     -------
     tuple of float or None
         Place and value of the lowest point, and the factor of the square;
-        None if the parabola has no lowest point.
+        None if the parabola has no lowest point, or the points stand more than
+        a degree apart.
     """
     left, right = (y[1] - y[0]) / (x[1] - x[0]), (y[2] - y[1]) / (x[2] - x[1])
     bend = (right - left) / (x[2] - x[0])
-    if not bend > 0.0:
+    # Between rays far apart the skip distance is no parabola: far steeper on the high side.
+    if not bend > 0.0 or x[2] - x[0] > _CLOSE:
         return None
     slope = left + bend * (x[1] - x[0])  # at the middle point
     return (

@@ -43,7 +43,7 @@ _NEAR_ENOUGH = 3e3
 _MOST_PASSES = 3
 _MOST_TRIALS = 9
 _BESIDE_STEP = 5e-4
-_LONGEST_MOVE = 0.02
+_LONGEST_MOVE = 0.08
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -119,7 +119,7 @@ def _candidates(link: Link, found: list[Fan]) -> _Search:
         # Turning the azimuth swings the landing place about the transmitter.
         swing = (
             EARTH_RADIUS * math.sin(distance / EARTH_RADIUS) / math.sin(start)
-            if distance > 30e3
+            if distance > 30e3 and start > 0.1
             else slope
         )
         swing *= math.sin(start) / start if start else 1.0

@@ -27,7 +27,7 @@ F_REGION: Final = 130e3
 
 _RAYS = 18
 _FIRST = (0.7, 0.85, 0.97, 1.08, 1.22, 1.45)
-_ROUNDS, _ROUNDS_NEAR = 2, 4
+_ROUNDS, _ROUNDS_NEAR = 3, 4
 _MOST_SHIFTS = 3
 _SLACK = 0.5e3
 _TOLERANCE = 30.0
@@ -227,7 +227,7 @@ def maximum_usable_frequencies(
     bottom, top = trial[:, 0], trial[:, -1]
     span = _FIRST[-1] / _FIRST[0]
     for _ in range(_MOST_SHIFTS):
-        both = margins(trial, 0)
+        both = margins(trial, 1)
         for bracket, values in zip(brackets, both, strict=True):
             bracket.narrow(trial, values)
         # The guess was too high where nothing arrived (by F, at least), too low
