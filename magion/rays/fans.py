@@ -221,29 +221,34 @@ def _gaps(fan: Fan, distance: float) -> FloatArray:
     return np.asarray((low[:, None] + (high - low)[:, None] * share).ravel())
 
 
-def vertex_of(x: FloatArray, y: FloatArray) -> tuple[float, float, float] | None:
+def vertex_of(zenith_angle: FloatArray, along: FloatArray) -> tuple[float, float, float] | None:
     """Lowest point of the parabola through three points.
 
     Parameters
     ----------
-    x, y : ndarray, shape (3,)
-        The points, x rising.
+    zenith_angle : ndarray, shape (3,)
+        Launch angles, rising [rad].
+    along : ndarray, shape (3,)
+        Distances at which the rays come down [m].
 
     Returns
     -------
     tuple of float or None
-        Place and value of the lowest point, and the factor of the square;
-        None if the parabola has no lowest point, or the points stand more than
-        a degree apart.
+        Place [rad] and value [m] of the lowest point, and the factor of the
+        square [m/rad²]; None if the parabola has no lowest point, or the points
+        stand more than a degree apart.
     """
-    left, right = (y[1] - y[0]) / (x[1] - x[0]), (y[2] - y[1]) / (x[2] - x[1])
-    bend = (right - left) / (x[2] - x[0])
+    left, right = (
+        (along[1] - along[0]) / (zenith_angle[1] - zenith_angle[0]),
+        (along[2] - along[1]) / (zenith_angle[2] - zenith_angle[1]),
+    )
+    bend = (right - left) / (zenith_angle[2] - zenith_angle[0])
     # Between rays far apart the skip distance is no parabola: far steeper on the high side.
-    if not bend > 0.0 or x[2] - x[0] > _CLOSE:
+    if not bend > 0.0 or zenith_angle[2] - zenith_angle[0] > _CLOSE:
         return None
-    slope = left + bend * (x[1] - x[0])  # at the middle point
+    slope = left + bend * (zenith_angle[1] - zenith_angle[0])  # at the middle point
     return (
-        float(x[1] - slope / (2.0 * bend)),
-        float(y[1] - slope * slope / (4.0 * bend)),
+        float(zenith_angle[1] - slope / (2.0 * bend)),
+        float(along[1] - slope * slope / (4.0 * bend)),
         float(bend),
     )
