@@ -199,6 +199,8 @@ def find_modes(scene: Scene, frequency: float, modes: tuple[Mode, ...], hour: in
             scene.medium,
             scene.field,
             default_zenith_angles(2.0),
+            # Where one hop reaches, the rays of two are seldom the strongest.
+            refinements=0 if counts[0] == 1 else 1,
         )
     specs = _specs(frequency, hour, wanted)
     homed = home(scene.link, specs, scene.medium, scene.field, found)

@@ -223,11 +223,13 @@ def maximum_usable_frequencies(
 
     brackets = [_Bracket(count), _Bracket(count)]
     near = link.distance < 300e3 * hops
+    # On the steepest paths the critical frequency decides, not a skip distance.
+    refinements = 0 if link.distance < 100e3 * hops else 1
     trial = guess[:, None] * np.array(_FIRST)
     bottom, top = trial[:, 0], trial[:, -1]
     span = _FIRST[-1] / _FIRST[0]
     for _ in range(_MOST_SHIFTS):
-        both = margins(trial, 1)
+        both = margins(trial, refinements)
         for bracket, values in zip(brackets, both, strict=True):
             bracket.narrow(trial, values)
         # The guess was too high where nothing arrived (by F, at least), too low
@@ -248,7 +250,7 @@ def maximum_usable_frequencies(
         same |= np.isnan(brackets[1].low)
         trials[1] = np.where(same[:, None], np.nan, trials[1])
         width = trials[0].shape[1]
-        found = margins(np.concatenate(trials, axis=1), 1)
+        found = margins(np.concatenate(trials, axis=1), refinements)
         second = np.where(same[:, None], found[1, :, :width], found[1, :, width:])
         brackets[0].narrow(trials[0], found[0, :, :width])
         brackets[1].narrow(np.where(same[:, None], trials[0], trials[1]), second)
