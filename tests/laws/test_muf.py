@@ -161,12 +161,18 @@ def test_separation_grows_north_south_near_the_dip_equator():
     assert np.abs(north - [0.64, 0.73, 0.76]).max() < 0.06
 
 
+SKIP_BETWEEN_RAYS = (
+    "the skip distance is taken from rays a third of a degree apart with a coarse step, so that "
+    "the MUF is off by up to 0.4 % here"
+)
+
+
 def specs_near(dip_deg, azimuth_deg, distance, above):
-    """Rays of both waves 0.4 % below and a share above their MUFs, which are good to 0.4 %."""
+    """Rays of both waves 0.2 % below and a share above their MUFs."""
     return [
         (float(muf * share), 0, (mode,))
         for mode, muf in zip(MODES, mufs(dip_deg, azimuth_deg, distance), strict=True)
-        for share in (0.996, above)
+        for share in (0.998, above)
     ]
 
 
@@ -180,7 +186,7 @@ def specs_near(dip_deg, azimuth_deg, distance, above):
         (1000, 90.0),
         (2500, 0.0),
         (2500, 90.0),
-        (3300, 0.0),
+        pytest.param(3300, 0.0, marks=pytest.mark.xfail(strict=True, reason=SKIP_BETWEEN_RAYS)),
     ],
 )
 def test_rays_come_just_below_the_muf_and_none_just_above(distance, azimuth):
@@ -205,6 +211,9 @@ def least_distance(link, medium, wanted, band, angles):
     [
         (300, 0.0, 1.003),
         (600, 0.0, 1.002),
+        pytest.param(
+            1000, 0.0, 1.002, marks=pytest.mark.xfail(strict=True, reason=SKIP_BETWEEN_RAYS)
+        ),
         (1000, 0.0, 1.004),
         (1500, 90.0, 1.002),
         (2500, 0.0, 1.002),
