@@ -51,7 +51,19 @@ class Ground:
 
 
 AVERAGE: Final = Ground(permittivity=13.0, conductivity=0.005)
-"""Average land, taken at the bounces between hops."""
+"""Average land, taken at the bounces between hops (common practice)."""
+
+PERFECT: Final = Ground(permittivity=1.0, conductivity=1e15)
+"""A perfect conductor, as good as one."""
+
+CLASSES: Final = {
+    "sea": Ground(permittivity=70.0, conductivity=5.0),
+    "wet": Ground(permittivity=30.0, conductivity=0.01),
+    "medium-dry": Ground(permittivity=15.0, conductivity=0.001),
+    "very-dry": Ground(permittivity=3.0, conductivity=1e-4),
+    "average": AVERAGE,
+}
+"""Classes of ground by name: those of ITU-R P.527, and average land [P527]_."""
 
 
 def reflection(

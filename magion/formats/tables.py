@@ -1,4 +1,4 @@
-"""Reading of CSV files, with messages that name file, line and column."""
+"""Reading of text and CSV files, with messages that name file, line and column."""
 
 import csv
 import math
@@ -47,13 +47,17 @@ def printable_name(path: str | Path) -> str:
     return safe if len(safe) <= 80 else "..." + safe[-77:]
 
 
-def read_text(path: str | Path) -> str:
+def read_text(path: str | Path, accepted: str = "a text file", largest: int = LARGEST_FILE) -> str:
     """The text of a regular file.
 
     Parameters
     ----------
     path : str or Path
         The file; UTF-8, with or without a byte-order mark.
+    accepted : str
+        What kind of file it should be, as messages say it.
+    largest : int
+        Greatest size that is read [bytes].
 
     Returns
     -------
@@ -69,14 +73,15 @@ def read_text(path: str | Path) -> str:
     name = printable_name(path)
     try:
         if not file.exists():
-            raise InputError(f"file {name} does not exist")
+            raise InputError(f"file {name} does not exist; accepted: {accepted}")
         if not file.is_file():
-            raise InputError(f"{name} is not a regular file; accepted: a CSV file")
-        if file.stat().st_size > LARGEST_FILE:
-            raise InputError(f"file {name} is larger than {LARGEST_FILE // 2**20} MiB")
+            raise InputError(f"{name} is not a regular file; accepted: {accepted}")
+        if file.stat().st_size > largest:
+            size = f"{largest // 2**20} MiB" if largest >= 2**20 else f"{largest // 2**10} KiB"
+            raise InputError(f"file {name} is larger than {size}; accepted: {accepted} up to that")
         return file.read_text(encoding="utf-8-sig")
     except UnicodeDecodeError:
-        raise InputError(f"file {name} is not UTF-8 text") from None
+        raise InputError(f"file {name} is not UTF-8 text; accepted: {accepted} in UTF-8") from None
     except (OSError, ValueError) as error:
         if isinstance(error, InputError):
             raise
@@ -200,7 +205,7 @@ def read_table(path: str | Path, required: tuple[str, ...], accepted: str = "") 
     """
     name = printable_name(path)
     # Not splitlines(): a line separator within a cell would shift every line number after it.
-    lines = list(enumerate(read_text(path).split("\n"), 1))
+    lines = list(enumerate(read_text(path, "a CSV file").split("\n"), 1))
     notes = [(i, x.strip()[1:].strip()) for i, x in lines if x.lstrip().startswith("#")]
     kept = [(i, x) for i, x in lines if x.strip() and not x.lstrip().startswith("#")]
     wanted = accepted or ",".join(required)

@@ -1,0 +1,1 @@
+"""The antenna: element patterns over ground, feed network, response to each hand."""
