@@ -339,6 +339,35 @@ def horizontal_direction(
     return np.asarray(np.cos(el) * (np.sin(az) * east + np.cos(az) * north) + np.sin(el) * up)
 
 
+def source_axes(azimuth: ArrayLike, elevation: ArrayLike) -> tuple[FloatArray, FloatArray]:
+    """Transverse axes of directions, in east, north and up.
+
+    ::
+
+                v  upward, across the direction
+                |   /  to the source
+                |  /
+                | /____ h  horizontal, toward growing azimuth (clockwise on the map)
+
+    A wave that arrives from there travels along h x v, one that leaves along -h x v.
+
+    Parameters
+    ----------
+    azimuth : array_like
+        Direction toward the source, east of true north [rad].
+    elevation : array_like
+        Above the horizontal [rad].
+
+    Returns
+    -------
+    h, v : ndarray, shape (3, ...)
+        Horizontal axis toward growing azimuth, and upward axis [1].
+    """
+    a, e = as_floats(azimuth, elevation)
+    sa, ca, se, ce = np.sin(a), np.cos(a), np.sin(e), np.cos(e)
+    return np.stack([ca, -sa, np.zeros_like(a)]), np.stack([-se * sa, -se * ca, ce])
+
+
 def azimuth_elevation(
     direction: FloatArray, latitude: ArrayLike, longitude: ArrayLike
 ) -> tuple[FloatArray, FloatArray]:
