@@ -7,17 +7,8 @@ from typing import Final
 
 import numpy as np
 
-from magion.answers.certainty import (
-    Change,
-    PathMufs,
-    StateProbabilities,
-    changes,
-    confidence_of,
-    least_fof2,
-    path_mufs,
-    probabilities,
-    state_of,
-)
+from magion.answers.advice import Known, advice_on
+from magion.answers.certainty import Change, PathMufs, changes, path_mufs
 from magion.answers.inputs import IonosphereInput, instant, require_frequency
 from magion.answers.modes import (
     GREATEST_ABSORPTION_DB,
@@ -26,12 +17,11 @@ from magion.answers.modes import (
     doppler_of_layers,
     find_modes,
 )
+from magion.answers.reception import AntennaOnPath, antenna_on_path, at_antenna
 from magion.answers.records import (
     SCHEMA,
-    Advice,
     Arrival,
     End,
-    Fading,
     IndexAtApex,
     Launch,
     Limiting,
@@ -44,13 +34,13 @@ from magion.answers.records import (
     WaveOnPath,
 )
 from magion.answers.scene import Scene, scene_of, with_changed_layers
+from magion.antenna.station import Station
 from magion.constants import EARTH_RADIUS, SPEED_OF_LIGHT
 from magion.errors import InputError
 from magion.field import MODEL, declination, dip, field_at, flux_density, gyrofrequency
 from magion.geometry import Place, azimuth_elevation, great_circle, local_axes
 from magion.polarization import (
     LARGEST_AXIAL_RATIO_DB,
-    Shape,
     axial_ratio_db,
     hand_of,
     major_axis_bearing,
@@ -81,6 +71,7 @@ def answer_path(
     when: datetime | None = None,
     ionosphere: IonosphereInput | None = None,
     *,
+    station: Station | None = None,
     with_changes: bool = False,
 ) -> PathAnswer:
     """Which hand each wave arrives with, and which to switch to.
@@ -97,6 +88,8 @@ def answer_path(
         Instant; without a zone UTC; now if not given.
     ionosphere : IonosphereInput, optional
         What is known of the ionosphere; else the climatology at 120 sfu.
+    station : Station, optional
+        Antenna, feed and relay of the receiver; else an ideal switch.
     with_changes : bool
         Whether to add the times of that UTC day at which a wave comes or goes
         (some seconds) [1].
@@ -132,6 +125,7 @@ def answer_path(
     shifts = _doppler_shifts(scene, frequency, found, given)
     waves = tuple(_wave(scene, frequency, m, found, mufs, shifts) for m in MODES)
     pair = (waves[0], waves[1])
+    antenna = None if station is None else _antenna(station, frequency, found, receiver)
     mid_latitude, mid_longitude = link.point(0.5)
     at_peak = field_at(mid_latitude, mid_longitude, overhead.hmf2, moment)
     gyro = float(gyrofrequency(flux_density(at_peak)))
@@ -153,8 +147,49 @@ def answer_path(
             fof2_error_mhz=None if overhead.fof2_error is None else overhead.fof2_error / 1e6,
         ),
         waves=pair,
-        advice=_advice(scene, frequency, pair, mufs, gyro, day, with_changes and day is None),
+        antenna=antenna,
+        advice=advice_on(
+            Known(
+                scene=scene,
+                frequency=frequency,
+                waves=pair,
+                mufs=mufs,
+                gyro=gyro,
+                day=day,
+                no_day=with_changes and day is None,
+                station=station,
+                antenna=antenna,
+            )
+        ),
     )
+
+
+def leading_rays(found: ModesFound) -> dict[Mode, ModeRay]:
+    """The strongest ray of each wave that arrives.
+
+    Parameters
+    ----------
+    found : ModesFound
+        All rays.
+
+    Returns
+    -------
+    dict
+        Mode to ray; a wave that is absorbed or does not come down is left out.
+    """
+    best: dict[Mode, ModeRay] = {}
+    for ray in sorted(found.rays, key=lambda r: r.level_db):
+        if ray.absorption_db <= GREATEST_ABSORPTION_DB:
+            best[ray.wave] = ray
+    return {m: best[m] for m in MODES if m in best}
+
+
+def _antenna(
+    station: Station, frequency: float, found: ModesFound, receiver: Place
+) -> AntennaOnPath | None:
+    leading = leading_rays(found)
+    here = at_antenna(leading, receiver, frequency)
+    return None if here is None else antenna_on_path(station, here, leading, receiver)
 
 
 def _end(place: Place) -> End:
@@ -433,168 +468,3 @@ def _changes_of_day(
     mufs = path_mufs(day, (1,))
     relative = np.array([(o.fof2_error or 0.0) / o.fof2 for o in day.overheads])
     return changes(moments, mufs, frequency, relative, scene.gyro_limit)
-
-
-def _advice(
-    scene: Scene,
-    frequency: float,
-    waves: tuple[WaveOnPath, WaveOnPath],
-    mufs: PathMufs,
-    gyro: float,
-    day: tuple[Change, ...] | None,
-    no_day: bool,
-) -> Advice:
-    ordinary, extraordinary = waves
-    state = state_of(ordinary.arrives, extraordinary.arrives)
-    taken = _taken(waves)
-    chances = _probabilities(scene, frequency, waves, mufs, gyro)
-    fading = _fading(waves)
-    sure = None if chances is None else confidence_of(chances, state)
-    caveats = _caveats(scene, frequency, waves, chances, state)
-    if no_day:
-        caveats += (
-            "Times of change are given for one hop (up to 3900 km) and for an ionosphere that "
-            "is known through the day: not here.",
-        )
-    if day is not None and scene.overheads[0].ratios != (1.0, 1.0, 1.0):
-        caveats += ("For the times of change the whole day is scaled as the values of now ask.",)
-    return Advice(
-        state=state,
-        state_probabilities=chances,
-        wave=taken.wave if taken else None,
-        receive_hand=taken.receive_hand if taken else None,
-        transmit_hand=taken.transmit_hand if taken else None,
-        relay_position=None,
-        transmit_relay_position=None,
-        rejection_db=None,
-        separation_db=None,
-        limited_by=None,
-        headline=_headline(taken, waves, sure),
-        confidence=sure,
-        caveats=caveats,
-        fading=fading,
-        changes=day,
-    )
-
-
-def _taken(waves: tuple[WaveOnPath, WaveOnPath]) -> WaveOnPath | None:
-    """The stronger wave; within 3 dB, the ordinary."""
-    ordinary, extraordinary = waves
-    if not (ordinary.arrives and extraordinary.arrives):
-        return ordinary if ordinary.arrives else extraordinary if extraordinary.arrives else None
-    lead = (extraordinary.level_db or 0.0) - (ordinary.level_db or 0.0)
-    return extraordinary if lead > 3.0 else ordinary
-
-
-def _probabilities(
-    scene: Scene,
-    frequency: float,
-    waves: tuple[WaveOnPath, WaveOnPath],
-    mufs: PathMufs,
-    gyro: float,
-) -> StateProbabilities | None:
-    overhead = scene.overheads[0]
-    if overhead.fof2_error is None:
-        return None
-    levels = []
-    for i, wave in enumerate(waves):
-        rays = (wave, *wave.rays) if wave.arrives else ()
-        muf = float(mufs.f_region[i, 0])
-        if wave.arrives:
-            muf = max(muf, frequency) if math.isfinite(muf) else frequency
-        elif muf >= frequency:
-            muf = math.nan  # no ray comes down here for another reason
-        absorbed = not wave.arrives and wave.absorption_db is not None
-        passed = wave.wave is Mode.EXTRAORDINARY and frequency <= scene.gyro_limit
-        if any(r.layer in ("E", "Es") for r in rays):
-            levels.append(0.0)
-        elif absorbed or passed or not math.isfinite(muf):
-            levels.append(math.inf)
-        else:
-            levels.append(least_fof2(frequency, muf, overhead.fof2, gyro, i == 0))
-    return probabilities((levels[0], levels[1]), overhead.fof2, overhead.fof2_error)
-
-
-def _fading(waves: tuple[WaveOnPath, WaveOnPath]) -> Fading | None:
-    shifts = [w.doppler_hz for w in waves]
-    if shifts[0] is None or shifts[1] is None:
-        return None
-    split = shifts[1] - shifts[0]
-    return Fading(doppler_split_hz=split, period_s=1.0 / abs(split) if split else None)
-
-
-def _headline(
-    taken: WaveOnPath | None, waves: tuple[WaveOnPath, WaveOnPath], sure: str | None
-) -> str:
-    if sure == "cannot_tell" and (taken is None or taken.receive_hand is None):
-        return "Too uncertain to tell: perhaps a wave arrives, but none in the central case."
-    if taken is None or taken.receive_hand is None or taken.transmit_hand is None:
-        return "Neither wave arrives: no hand will help on this frequency now."
-    other = waves[1] if taken is waves[0] else waves[0]
-    company = "both waves arrive" if other.arrives else "the other wave does not arrive"
-    if other.arrives and other.level_db is not None and taken.level_db is not None:
-        lead = taken.level_db - other.level_db
-        company = (
-            f"the other wave is {lead:.0f} dB weaker"
-            if lead >= 3.0
-            else ("both arrive, within 3 dB")
-        )
-    if taken.shape is Shape.LINEAR:
-        return (
-            f"{taken.wave.value.capitalize()} wave, nearly linear: use a single wire along "
-            f"{taken.major_axis_bearing_deg:.0f}° true ({company})."
-        )
-    if sure == "cannot_tell":
-        return (
-            f"Too uncertain to tell which waves arrive. If the {taken.wave.value} does: receive "
-            f"{taken.receive_hand.value}, transmit {taken.transmit_hand.value} to answer on it."
-        )
-    return (
-        f"Receive {taken.receive_hand.value}: {taken.wave.value} wave; to answer on it transmit "
-        f"{taken.transmit_hand.value} ({company})."
-    )
-
-
-def _caveats(
-    scene: Scene,
-    frequency: float,
-    waves: tuple[WaveOnPath, WaveOnPath],
-    chances: StateProbabilities | None,
-    state: str,
-) -> tuple[str, ...]:
-    caveats = list(scene.overheads[0].caveats)
-    if chances is not None and confidence_of(chances, state) == "cannot_tell":
-        caveats.append("foF2 is too uncertain to tell which waves arrive.")
-    if frequency <= scene.gyro_limit:
-        caveats.append(
-            "At frequencies near the gyrofrequency the ground wave may be what is heard."
-        )
-    for wave in waves:
-        if wave.arrives and wave.shape is Shape.LINEAR:
-            caveats.append(
-                f"The {wave.wave.value} wave is nearly linear: its hand is only a sign, and one "
-                "wire along its axis beats circular."
-            )
-        if wave.arrives and wave.limiting and abs(wave.limiting.field_angle_deg - 90.0) < 3.0:
-            caveats.append(
-                f"The {wave.wave.value} wave leaves nearly across the field "
-                f"({wave.limiting.field_angle_deg:.0f}°): a small change turns its hand over."
-            )
-        if wave.arrives and wave.other_wave_db is not None and wave.other_wave_db > -20.0:
-            caveats.append(
-                f"On its way out the {wave.wave.value} wave feeds the other one "
-                f"({wave.other_wave_db:.0f} dB): no hand is pure here."
-            )
-        if wave.arrives and wave.launch and wave.launch.elevation_deg < 3.0:
-            caveats.append(
-                f"The {wave.wave.value} wave leaves at {wave.launch.elevation_deg:.1f}° elevation: "
-                "hills and the ground decide whether it gets away."
-            )
-        if wave.arrives and (wave.hops or 1) > 1:
-            caveats.append(
-                f"The {wave.wave.value} wave's strongest ray makes {wave.hops} hops; average land "
-                "is taken at the bounces."
-            )
-    if all(w.arrives for w in waves) and waves[0].receive_hand is waves[1].receive_hand:
-        caveats.append("Both waves arrive with the same hand: the relay cannot part them.")
-    return tuple(caveats)

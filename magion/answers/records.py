@@ -4,6 +4,7 @@ from dataclasses import dataclass
 from typing import Final
 
 from magion.answers.certainty import Change, StateProbabilities
+from magion.answers.reception import AntennaOnPath
 from magion.polarization import Hand, Shape
 from magion.waves import Mode
 
@@ -383,6 +384,9 @@ class PathAnswer:
         Operating frequency [MHz].
     path, field, ionosphere, waves, advice
         Parts of their own; `waves` has the ordinary first.
+    antenna : AntennaOnPath or None
+        What the station's antenna makes of the waves; None without a station
+        file, where no wave arrives, and where its impedance is not known.
     """
 
     schema: str
@@ -395,3 +399,4 @@ class PathAnswer:
     ionosphere: MidpointIonosphere
     waves: tuple[WaveOnPath, WaveOnPath]
     advice: Advice
+    antenna: AntennaOnPath | None = None

@@ -11,10 +11,13 @@ import click
 
 if TYPE_CHECKING:
     from magion.answers.inputs import IonosphereInput
+    from magion.antenna.station import Station
     from magion.geometry import Place
 
+MOST_IN_RANGE = 10_000
 _MINUS = "\N{MINUS SIGN}"
 _NEGATIVE = re.compile(r"-[0-9.]")
+_NAMED = "magion.named_places"
 _Decorated = TypeVar("_Decorated", bound=Callable[..., Any])
 
 
@@ -94,7 +97,7 @@ class Instant(click.ParamType):
 
 
 class PlaceType(click.ParamType):
-    """A place: coordinates or a locator."""
+    """A place: coordinates, a locator, or a name from the station file."""
 
     name = "place"
 
@@ -106,15 +109,111 @@ class PlaceType(click.ParamType):
 
         if isinstance(value, Place):
             return value
+        known: dict[str, Place] = ctx.meta.get(_NAMED, {}) if ctx else {}
+        named = known.get(" ".join(value.split()).casefold())
+        if named is not None:
+            return named
         try:
             return parse_place(typed(value))
         except InputError as error:
             self.fail(printable(str(error)) if len(value) > 80 else str(error), param, ctx)
 
 
+class StationType(click.ParamType):
+    """A station file; the name in it becomes a place."""
+
+    name = "file"
+
+    def convert(self, value: Any, param: Any, ctx: Any) -> "Station":
+        """Read the file."""
+        from magion.antenna.station import Station
+        from magion.formats.station import read_station
+
+        station = value if isinstance(value, Station) else read_station(value)
+        if station.name and ctx:
+            ctx.meta.setdefault(_NAMED, {})[station.name.casefold()] = station.place
+        return station
+
+
+class Range(click.ParamType):
+    """Numbers from a first to a last by a step, or one number."""
+
+    name = "first:last:step"
+
+    def convert(self, value: Any, param: Any, ctx: Any) -> tuple[float, ...]:
+        """Read the range."""
+        if isinstance(value, tuple):
+            return value
+        parts = [NUMBER.convert(part, param, ctx) for part in str(value).split(":")]
+        if len(parts) == 1:
+            return (parts[0],)
+        if len(parts) != 3 or parts[2] <= 0.0 or parts[1] < parts[0]:
+            from magion.formats.tables import printable
+
+            self.fail(
+                f"{printable(typed(value))!r} is not a range; accepted: first:last:step, as "
+                "3.5:3.8:0.05",
+                param,
+                ctx,
+            )
+        first, last, step = parts
+        count = int((last - first) / step + 1e-9) + 1
+        if count > MOST_IN_RANGE:
+            self.fail(
+                f"{typed(value)} is {count} values; accepted: up to {MOST_IN_RANGE}", param, ctx
+            )
+        # The decimals that were typed, without the noise of the sum.
+        return tuple(round(first + i * step, 9) for i in range(count))
+
+
 NUMBER = Number()
+RANGE = Range()
 INSTANT = Instant()
 PLACE = PlaceType()
+
+
+def station_option(*, required: bool = False) -> Callable[[_Decorated], _Decorated]:
+    """Option ``--station``, read before the places that may name it.
+
+    Parameters
+    ----------
+    required : bool
+        Whether a command cannot do without.
+
+    Returns
+    -------
+    decorator
+        Adds the option to a command.
+    """
+    return click.option(
+        "--station",
+        type=StationType(),
+        is_eager=True,
+        required=required,
+        metavar="FILE.toml",
+        help="Your antenna, feed and relay labels; its name stands for its place.",
+    )
+
+
+def plot_option(command: _Decorated) -> _Decorated:
+    """Option ``--plot``.
+
+    Parameters
+    ----------
+    command : function
+        A command.
+
+    Returns
+    -------
+    function
+        The command with the option.
+    """
+    return click.option(
+        "--plot",
+        type=click.Path(path_type=Path),
+        metavar="FILE",
+        help="Draw the figure too: PNG, SVG or PDF by the file's ending.",
+    )(command)
 
 
 def output_options(*formats: str) -> Callable[[_Decorated], _Decorated]:

@@ -13,9 +13,11 @@ from magion.cli.arguments import (
     ionosphere_from,
     ionosphere_options,
     output_options,
+    station_option,
 )
 
 if TYPE_CHECKING:
+    from magion.antenna.station import Station
     from magion.geometry import Place
 
 
@@ -24,6 +26,7 @@ if TYPE_CHECKING:
 @click.argument("receiver", metavar="TO", type=PLACE)
 @click.option("-f", "--frequency", type=NUMBER, required=True, help="Frequency [MHz].")
 @click.option("--time", "when", type=INSTANT, help="Time, ISO 8601, UTC; now by default.")
+@station_option()
 @ionosphere_options
 @click.option(
     "--fof2-rate",
@@ -44,6 +47,7 @@ def command(
     receiver: "Place",
     frequency: float,
     when: datetime | None,
+    station: "Station | None",
     changes: bool,
     form: str,
     output: Path | None,
@@ -64,6 +68,12 @@ def command(
     from magion.render.text import path_text
 
     answer = answer_path(
-        transmitter, receiver, frequency, when, ionosphere_from(**known), with_changes=changes
+        transmitter,
+        receiver,
+        frequency,
+        when,
+        ionosphere_from(**known),
+        station=station,
+        with_changes=changes,
     )
     give(answer, form, output, path_text, path_rows)

@@ -74,6 +74,48 @@ def write(text: str, output: Path | None) -> None:
     replace_file(output, text.encode("utf-8"))
 
 
+def draw(figure: Callable[[], Any], target: Path) -> None:
+    """Draw a figure into a file, whole or not at all.
+
+    Parameters
+    ----------
+    figure : callable
+        Makes the figure; called after the file's ending was found good.
+    target : Path
+        The file: .png, .svg or .pdf.
+
+    Raises
+    ------
+    InputError
+        If the ending is another, or the file cannot be written.
+    """
+    from magion.plots.saving import encoded, require_ending
+
+    ending = require_ending(target.name)
+    require_target(target)
+    replace_file(target, encoded(figure(), ending))
+
+
+def require_target(target: Path) -> None:
+    """Refuse a file that cannot be written before work is spent on it.
+
+    Parameters
+    ----------
+    target : Path
+        The file.
+
+    Raises
+    ------
+    InputError
+        If it is not a regular file or its folder is missing.
+    """
+    name = printable(str(target))
+    if target.is_dir() or (target.exists() and not target.is_file()):
+        raise InputError(f"output {name} is not a regular file")
+    if not target.parent.is_dir():
+        raise InputError(f"output {name}: the folder {printable(str(target.parent))} is missing")
+
+
 def replace_file(target: Path, content: bytes) -> None:
     """Put a file in place in one move, with the user's usual permissions.
 
@@ -90,10 +132,7 @@ def replace_file(target: Path, content: bytes) -> None:
         If it is not a regular file or its folder cannot be written.
     """
     name = printable(str(target))
-    if target.is_dir() or (target.exists() and not target.is_file()):
-        raise InputError(f"output {name} is not a regular file")
-    if not target.parent.is_dir():
-        raise InputError(f"output {name}: the folder {printable(str(target.parent))} is missing")
+    require_target(target)
     try:
         handle, partial = tempfile.mkstemp(prefix=f".{target.name}.", dir=target.parent)
         try:

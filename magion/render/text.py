@@ -5,7 +5,9 @@ import textwrap
 from collections.abc import Callable
 
 from magion.answers.point import FieldAnswer, OneWave, WaveAnswer
+from magion.answers.reception import AntennaOnPath
 from magion.answers.records import End, PathAnswer, RayAnswer, WaveOnPath
+from magion.antenna.response import GREATEST_REJECTION_DB
 from magion.polarization import Hand, hand_in_words
 
 WIDTH = 80
@@ -56,7 +58,23 @@ def for_encoding(text: str, encoding: str | None) -> str:
     return text
 
 
-def _wrapped(text: str, indent: str = "  ", first: str | None = None) -> list[str]:
+def wrapped(text: str, indent: str = "  ", first: str | None = None) -> list[str]:
+    """Text broken at 80 columns.
+
+    Parameters
+    ----------
+    text : str
+        One paragraph.
+    indent : str
+        Before every line but the first.
+    first : str, optional
+        Before the first line; else as the others.
+
+    Returns
+    -------
+    list of str
+        Its lines.
+    """
     # A number and its unit stay together.
     kept = re.sub(r"(?<=\d) (?=(?:%|MHz|km|dB|nT|Hz|min)\b|%)", _HELD, text)
     lines = textwrap.wrap(
@@ -107,7 +125,7 @@ def path_text(answer: PathAnswer) -> str:
     str
         The line to act on, the two waves side by side, then why.
     """
-    lines = [*_wrapped(answer.advice.headline, "", ""), ""]
+    lines = [*wrapped(answer.advice.headline, "", ""), ""]
     path = answer.path
     lines.append(f"  from  {_end(answer.transmitter)}")
     lines.append(f"  to    {_end(answer.receiver)}")
@@ -119,6 +137,8 @@ def path_text(answer: PathAnswer) -> str:
     lines.append(f"  {way}; {answer.frequency_mhz:.3f} MHz; {_time(answer.time_utc)}")
     lines += ["", _pair("", [w.wave.value for w in answer.waves])]
     lines += _wave_rows(answer)
+    if answer.antenna is not None:
+        lines += ["", "Antenna", *_antenna(answer.antenna)]
     lines += ["", "How sure"]
     lines += _how_sure(answer)
     lines += ["", "Why"]
@@ -126,7 +146,7 @@ def path_text(answer: PathAnswer) -> str:
     if answer.advice.caveats:
         lines += ["", "Keep in mind"]
         for caveat in answer.advice.caveats:
-            lines += _wrapped(caveat, "    ", "  - ")
+            lines += wrapped(caveat, "    ", "  - ")
     return "\n".join(lines) + "\n"
 
 
@@ -224,7 +244,7 @@ def _how_sure(answer: PathAnswer) -> list[str]:
     lines: list[str] = []
     chances = advice.state_probabilities
     if chances is None or sky.fof2_error_mhz is None:
-        lines += _wrapped(f"Now: {_STATES[advice.state]}. The uncertainty of foF2 is not known.")
+        lines += wrapped(f"Now: {_STATES[advice.state]}. The uncertainty of foF2 is not known.")
     else:
         word = "cannot tell" if advice.confidence == "cannot_tell" else advice.confidence
         parts = [
@@ -232,7 +252,7 @@ def _how_sure(answer: PathAnswer) -> list[str]:
             for name in _STATES
             if float(getattr(chances, name)) >= 0.005
         ]
-        lines += _wrapped(
+        lines += wrapped(
             f"Now: {_STATES[advice.state]}; confidence: {word}. With foF2 {sky.fof2_mhz:.2f} ± "
             f"{sky.fof2_error_mhz:.2f} MHz: {', '.join(parts)}."
         )
@@ -240,10 +260,10 @@ def _how_sure(answer: PathAnswer) -> list[str]:
         split = advice.fading.doppler_split_hz
         period = advice.fading.period_s
         beat = "no beat" if period is None else f"a fade every {period:.0f} s"
-        lines += _wrapped(f"At the stated rates the two waves are {split:+.3f} Hz apart: {beat}.")
+        lines += wrapped(f"At the stated rates the two waves are {split:+.3f} Hz apart: {beat}.")
     if advice.changes is not None:
         if not advice.changes:
-            lines += _wrapped("No wave comes or goes on this day.")
+            lines += wrapped("No wave comes or goes on this day.")
         for change in advice.changes:
             doubt = "" if change.plus_minus_min is None else f" ± {change.plus_minus_min:.0f} min"
             verb = "comes" if change.comes else "goes"
@@ -254,28 +274,75 @@ def _how_sure(answer: PathAnswer) -> list[str]:
     return lines
 
 
+def _antenna(antenna: AntennaOnPath) -> list[str]:
+    """What every relay position makes of the two waves."""
+    name = antenna.name or "Station"
+    lines = wrapped(
+        f"{name}: {antenna.kind}, {antenna.height_m:.1f} m up, ground: {antenna.ground}; feed: "
+        f"{antenna.feed}, SWR {antenna.network.swr:.1f}, {antenna.network.loss_db:.1f} dB lost."
+    )
+    wide = max(8, *(len(p.label) for p in (*antenna.positions, *antenna.arms)))
+    lines.append(f"  {'relay':<{wide}}  overhead   hears O   hears X   O over X   sends into O")
+    extra = [a for a in antenna.arms if all(p.single_arm != a.label for p in antenna.positions)]
+    for position in (*antenna.positions, *extra):
+        marks = [position.label == antenna.position, position.label == antenna.transmit_position]
+        mark = ("*" if marks[0] else "") + ("+" if marks[1] else "")
+        hand = position.overhead_hand.value if position.overhead_hand else "no hand"
+        sends = "-" if position.ordinary_share is None else f"{100 * position.ordinary_share:.0f} %"
+        label = f"({position.label})" if position in extra else position.label
+        lines.append(
+            f"  {label:<{wide}}  {hand:<8}{position.ordinary_gain_dbi:6.1f} dBi"
+            f"{position.extraordinary_gain_dbi:6.1f} dBi"
+            f"{position.ordinary_over_extraordinary_db:+7.1f} dB{sends:>10}  {mark}".rstrip()
+        )
+    lines.append("  * to receive, + to answer; (in brackets) one arm alone, not in the relay")
+    over = f"The {antenna.wave.value} wave: {antenna.level_over_dipole_db:+.1f} dB over one dipole"
+    if antenna.both_ends_db is not None:
+        over += f", {antenna.both_ends_db:+.1f} dB if both ends do as well"
+    if antenna.fade_depth_before_db is not None and antenna.fade_depth_after_db is not None:
+        over += (
+            f"; fades of {_depth(antenna.fade_depth_before_db)} on one dipole become "
+            f"{_depth(antenna.fade_depth_after_db)}"
+        )
+    lines += wrapped(f"{over}.")
+    if antenna.causes:
+        listed = ", ".join(
+            f"{c.cause} {_rejection(c.rejection_without_db)}" for c in antenna.causes
+        )
+        lines += wrapped(f"Rejection would be, without each cause in turn: {listed} dB.")
+    return lines
+
+
+def _depth(db: float) -> str:
+    return "over 40 dB" if db > 40.0 else f"{db:.1f} dB"
+
+
+def _rejection(db: float) -> str:
+    return "60 or more" if db >= GREATEST_REJECTION_DB else f"{db:.0f}"
+
+
 def _why(answer: PathAnswer) -> list[str]:
     lines: list[str] = []
     for wave in answer.waves:
         if not wave.arrives:
-            lines += _wrapped(f"The {wave.wave.value} wave does not arrive: {wave.reason}.")
+            lines += wrapped(f"The {wave.wave.value} wave does not arrive: {wave.reason}.")
         elif wave.limiting and wave.receive_hand:
             place = coordinates(wave.limiting.latitude_deg, wave.limiting.longitude_deg)
             side = "along" if wave.limiting.field_angle_deg < 90.0 else "against"
-            lines += _wrapped(
+            lines += wrapped(
                 f"The {wave.wave.value} wave leaves the ionosphere at "
                 f"{wave.limiting.height_km:.0f} km over {place}, running {side} the field "
                 f"({wave.limiting.field_angle_deg:.0f}°): {wave.receive_hand.value}."
             )
     field, sky = answer.field, answer.ionosphere
-    lines += _wrapped(
+    lines += wrapped(
         f"Field at the midpoint, {field.height_km:.0f} km: {field.flux_density_nt:.0f} nT, dip "
         f"{field.dip_deg:.1f}°, declination {round(field.declination_deg, 1) + 0.0:.1f}°, "
         f"gyrofrequency "
         f"{field.gyrofrequency_mhz:.3f} MHz ({field.model})."
     )
     e_region = "" if sky.foe_mhz is None else f", foE {sky.foe_mhz:.2f} MHz"
-    lines += _wrapped(
+    lines += wrapped(
         f"Ionosphere there: foF2 {sky.fof2_mhz:.2f} MHz, fxF2 {sky.fxf2_mhz:.2f} MHz, hmF2 "
         f"{sky.hmf2_km:.0f} km{e_region} ({sky.source})."
     )
