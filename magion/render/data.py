@@ -9,6 +9,7 @@ from collections.abc import Iterable
 from enum import Enum
 from typing import Any, get_args, get_origin, get_type_hints
 
+from magion.answers.pattern import AntennaAnswer
 from magion.answers.records import PathAnswer, RayAnswer, WaveOnPath
 
 _FORMULA = ("=", "+", "-", "@", "\t", "\r")
@@ -32,6 +33,8 @@ def plain(value: Any) -> Any:
         return {f.name: plain(getattr(value, f.name)) for f in dataclasses.fields(value)}
     if isinstance(value, Enum):
         return value.value
+    if hasattr(value, "tolist"):
+        return plain(value.tolist())  # an array
     if isinstance(value, tuple | list):
         return [plain(v) for v in value]
     if isinstance(value, float) and not math.isfinite(value):
@@ -142,3 +145,26 @@ def path_rows(answer: PathAnswer) -> list[dict[str, Any]]:
         for ray in wave.rays:
             rows.append(common | _walk(RayAnswer, ray, "") | {"muf_mhz": wave.muf_mhz})
     return rows
+
+
+def antenna_rows(answer: AntennaAnswer) -> list[dict[str, Any]]:
+    """The response over the sky, one row a relay position and direction.
+
+    Parameters
+    ----------
+    answer : AntennaAnswer
+        The answer.
+
+    Returns
+    -------
+    list of dict
+        Dotted keys to values.
+    """
+    keys = ("right_dbi", "left_dbi", "right_over_left_db")
+    return [
+        {"label": p.label, "elevation_deg": float(e), "azimuth_deg": float(a)}
+        | {key: float(getattr(p, key)[i, j]) for key in keys}
+        for p in answer.positions
+        for i, e in enumerate(answer.elevation_deg)
+        for j, a in enumerate(answer.azimuth_deg)
+    ]

@@ -1,0 +1,1 @@
+"""Records as figures; the only layer that knows matplotlib."""
