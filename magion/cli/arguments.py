@@ -172,6 +172,22 @@ INSTANT = Instant()
 PLACE = PlaceType()
 
 
+def flat(ranges: tuple[tuple[float, ...], ...]) -> tuple[float, ...] | None:
+    """Values of an option that may be given several times.
+
+    Parameters
+    ----------
+    ranges : tuple of tuple of float
+        What each use of the option gave.
+
+    Returns
+    -------
+    tuple of float or None
+        All of them in order, each once; None where the option was not used.
+    """
+    return tuple(dict.fromkeys(v for one in ranges for v in one)) if ranges else None
+
+
 def station_option(*, required: bool = False) -> Callable[[_Decorated], _Decorated]:
     """Option ``--station``, read before the places that may name it.
 

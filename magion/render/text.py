@@ -134,7 +134,7 @@ def path_text(answer: PathAnswer) -> str:
         way += f", bearing {path.bearing_deg:.0f}°, back {path.back_bearing_deg:.0f}°"
     else:
         way = "straight up and down"
-    lines.append(f"  {way}; {answer.frequency_mhz:.3f} MHz; {_time(answer.time_utc)}")
+    lines.append(f"  {way}; {answer.frequency_mhz:.3f} MHz; {in_words(answer.time_utc)}")
     lines += ["", _pair("", [w.wave.value for w in answer.waves])]
     lines += _wave_rows(answer)
     if answer.antenna is not None:
@@ -150,7 +150,19 @@ def path_text(answer: PathAnswer) -> str:
     return "\n".join(lines) + "\n"
 
 
-def _time(time_utc: str) -> str:
+def in_words(time_utc: str) -> str:
+    """An instant for reading.
+
+    Parameters
+    ----------
+    time_utc : str
+        ISO 8601, ending in Z.
+
+    Returns
+    -------
+    str
+        Such as ``2026-06-21 12:00 UTC``.
+    """
     return time_utc.replace("T", " ").replace(":00Z", "Z").replace("Z", " UTC")
 
 
@@ -237,6 +249,22 @@ _STATES = {
     "extraordinary_only": "only the extraordinary",
     "none": "neither wave",
 }
+
+
+def states_in_short(state: str) -> str:
+    """A state in a word or two.
+
+    Parameters
+    ----------
+    state : str
+        "both", "ordinary_only", "extraordinary_only" or "none".
+
+    Returns
+    -------
+    str
+        "both", "O only", "X only" or "none".
+    """
+    return {"ordinary_only": "O only", "extraordinary_only": "X only"}.get(state, state)
 
 
 def _how_sure(answer: PathAnswer) -> list[str]:
