@@ -15,7 +15,7 @@ from typing import Final
 import numpy as np
 
 from magion.answers.scene import Scene
-from magion.arrays import FloatArray
+from magion.arrays import FloatArray, IntArray
 from magion.rays.link import Link
 from magion.rays.muf import Mufs, elevation_of_hop, maximum_usable_frequencies
 from magion.waves import extraordinary_critical_frequency
@@ -56,7 +56,9 @@ class PathMufs:
     f_region: FloatArray
 
 
-def path_mufs(scene: Scene, hops: tuple[int, ...], *, wide: bool = False) -> PathMufs:
+def path_mufs(
+    scene: Scene, hops: tuple[int, ...], *, wide: bool = False, hours: IntArray | None = None
+) -> PathMufs:
     """MUFs of both waves of a path at every hour of a scene.
 
     Parameters
@@ -67,18 +69,21 @@ def path_mufs(scene: Scene, hops: tuple[int, ...], *, wide: bool = False) -> Pat
         Numbers of hops; the first with which anything arrives counts [1].
     wide : bool
         As for :func:`magion.rays.muf.maximum_usable_frequencies` [1].
+    hours : ndarray of int, optional
+        Some hours of the scene only.
 
     Returns
     -------
     PathMufs
         NaN where nothing arrives.
     """
-    hours = len(scene.overheads)
-    which = np.tile(np.arange(hours), 2)
-    extraordinary = np.repeat([False, True], hours)
-    best = [np.full(2 * hours, np.nan), np.full(2 * hours, np.nan)]
+    chosen = np.arange(len(scene.overheads)) if hours is None else hours
+    overheads = [scene.overheads[i] for i in chosen]
+    which = np.tile(chosen, 2)
+    extraordinary = np.repeat([False, True], chosen.size)
+    best = [np.full(2 * chosen.size, np.nan), np.full(2 * chosen.size, np.nan)]
     for count in hops:
-        guess = np.array([_guess(scene.link, o.fof2, o.foe, count) for o in scene.overheads])
+        guess = np.array([_guess(scene.link, o.fof2, o.foe, count) for o in overheads])
         found: Mufs = maximum_usable_frequencies(
             scene.link,
             which,
@@ -276,14 +281,14 @@ def changes(
             share = gap[i] / (gap[i] - gap[i + 1])
             step = hours[i + 1] - hours[i]
             slope = abs(gap[i + 1] - gap[i]) / step
-            doubt = float(relative_deviation[i]) * frequency / slope * 60.0
-            told = doubt <= _LONGEST_DOUBT and bool(by_f[wave, i] and by_f[wave, i + 1])
+            spread = float(relative_deviation[i] * frequency / slope) * 60.0
+            told = spread <= _LONGEST_DOUBT and bool(by_f[wave, i] and by_f[wave, i + 1])
             events.append(
                 (
                     float(hours[i] + share * step),
                     wave,
                     bool(gap[i + 1] >= 0.0),
-                    doubt if told else None,
+                    spread if told else None,
                 )
             )
     present = [bool(values[0, 0] >= frequency), bool(values[1, 0] >= frequency)]

@@ -1,6 +1,7 @@
 """Every ray of every mode of one path, with its hand, loss and level."""
 
 import math
+from collections.abc import Iterable, Sequence
 from dataclasses import dataclass
 from itertools import product
 from typing import Final
@@ -23,7 +24,7 @@ from magion.rays.exit import (
 from magion.rays.fans import Fan, default_zenith_angles, fans
 from magion.rays.homing import HomedRay, home
 from magion.rays.losses import absorption, phase_path_change
-from magion.rays.muf import LONGEST_HOP, branches
+from magion.rays.muf import LONGEST_HOP, angles_of_hop, branches
 from magion.waves import MODES, Mode, index_difference, phase_to_go, wave_axes
 
 GREATEST_ABSORPTION_DB: Final = 60.0
@@ -38,7 +39,9 @@ SHORTEST_REACH: Final = 1500e3
 MOST_MIXED_HOPS: Final = 2
 """Up to so many hops every sequence of waves is traced; beyond, only pure ones [1]."""
 
-Sequence = tuple[Mode, ...]
+Waves = tuple[Mode, ...]
+
+_PURE_TOLERANCE = 30.0
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -69,7 +72,7 @@ class ModeRay:
     """
 
     ray: HomedRay
-    sequence: Sequence
+    sequence: Waves
     layers: tuple[str, ...]
     down: PlasmaPoint
     up: PlasmaPoint
@@ -141,7 +144,7 @@ def hop_counts(distance: float, reach: float = LONGEST_HOP) -> tuple[int, ...]:
     return tuple(sorted({least, least + 1, *((short, short + 1) if short > least else ())}))
 
 
-def sequences(hops: int, modes: tuple[Mode, ...]) -> list[Sequence]:
+def sequences(hops: int, modes: tuple[Mode, ...]) -> list[Waves]:
     """Sequences of waves over a number of hops.
 
     Parameters
@@ -180,9 +183,9 @@ def find_modes(scene: Scene, frequency: float, modes: tuple[Mode, ...], hour: in
     ModesFound
         All rays.
     """
-    wanted: list[Sequence] = []
+    wanted: list[Waves] = []
     found: list[Fan] = []
-    single: list[Sequence] = [(m,) for m in modes]
+    single: list[Waves] = [(m,) for m in modes]
     one_hop = fans(scene.link, _specs(frequency, hour, single), scene.medium, scene.field)
     reach = max((b.greatest for f in one_hop for b in branches(f)), default=LONGEST_HOP)
     counts = hop_counts(scene.link.distance, reach)
@@ -208,12 +211,77 @@ def find_modes(scene: Scene, frequency: float, modes: tuple[Mode, ...], hour: in
     return ModesFound(rays=tuple(rays), hops=counts, fans=dict(zip(modes, one_hop, strict=True)))
 
 
-def _specs(frequency: float, hour: int, wanted: list[Sequence]) -> Specs:
+def strongest(rays: Iterable[ModeRay]) -> dict[Mode, ModeRay]:
+    """The strongest ray of each wave that arrives.
+
+    Parameters
+    ----------
+    rays : iterable of ModeRay
+        Rays of one path, frequency and hour.
+
+    Returns
+    -------
+    dict
+        Mode to ray, the ordinary first; a wave that is absorbed or has no ray
+        is left out.
+    """
+    best: dict[Mode, ModeRay] = {}
+    for ray in sorted(rays, key=lambda r: r.level_db):
+        if ray.absorption_db <= GREATEST_ABSORPTION_DB:
+            best[ray.wave] = ray
+    return {m: best[m] for m in MODES if m in best}
+
+
+def pure_rays(
+    scene: Scene, wanted: Sequence[tuple[float, int, Mode]], hops: int
+) -> list[tuple[ModeRay, ...]]:
+    """Rays of one wave on every hop, for many frequencies and hours in one batch.
+
+    Parameters
+    ----------
+    scene : Scene
+        The path.
+    wanted : sequence of (float, int, Mode)
+        Frequency [Hz], index of the hour, and wave.
+    hops : int
+        Number of hops [1].
+
+    Returns
+    -------
+    list of tuple of ModeRay
+        For each of them every ray found; what the waves feed of one another on
+        the way out is not computed (`coupling` is 0).
+    """
+    if not wanted:
+        return []
+    specs = specs_of([(f, hour, (mode,) * hops) for f, hour, mode in wanted])
+    found = fans(
+        scene.link,
+        specs,
+        scene.medium,
+        scene.field,
+        angles_of_hop(scene.link, hops),
+        tolerance=_PURE_TOLERANCE,
+    )
+    rays: list[list[ModeRay]] = [[] for _ in wanted]
+    for ray in home(scene.link, specs, scene.medium, scene.field, found):
+        f, hour, mode = wanted[ray.spec]
+        rays[ray.spec].append(_mode_ray(scene, f, hour, (mode,) * hops, ray, coupled=False))
+    return [tuple(r) for r in rays]
+
+
+def _specs(frequency: float, hour: int, wanted: list[Waves]) -> Specs:
     return specs_of([(frequency, hour, s) for s in wanted])
 
 
 def _mode_ray(
-    scene: Scene, frequency: float, hour: int, sequence: Sequence, ray: HomedRay
+    scene: Scene,
+    frequency: float,
+    hour: int,
+    sequence: Waves,
+    ray: HomedRay,
+    *,
+    coupled: bool = True,
 ) -> ModeRay:
     medium, field = scene.medium, scene.field
     exits = [limiting_polarization(t, frequency, hour, medium, field) for t in ray.tracks]
@@ -240,7 +308,9 @@ def _mode_ray(
         absorption_db=lost,
         bounce_db=-10.0 * math.log10(max(kept, 1e-12)),
         focus_db=focus_db(ray, receiver.latitude, receiver.longitude),
-        coupling=_coupling(scene, frequency, hour, sequence[-1], ray, exits[-1]),
+        coupling=(
+            _coupling(scene, frequency, hour, sequence[-1], ray, exits[-1]) if coupled else 0.0
+        ),
     )
 
 

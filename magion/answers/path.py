@@ -16,8 +16,9 @@ from magion.answers.modes import (
     ModesFound,
     doppler_of_layers,
     find_modes,
+    strongest,
 )
-from magion.answers.reception import AntennaOnPath, antenna_on_path, at_antenna
+from magion.answers.reception import AntennaOnPath, antenna_on_path, at_antenna, relay_at
 from magion.answers.records import (
     SCHEMA,
     Arrival,
@@ -164,32 +165,12 @@ def answer_path(
     )
 
 
-def leading_rays(found: ModesFound) -> dict[Mode, ModeRay]:
-    """The strongest ray of each wave that arrives.
-
-    Parameters
-    ----------
-    found : ModesFound
-        All rays.
-
-    Returns
-    -------
-    dict
-        Mode to ray; a wave that is absorbed or does not come down is left out.
-    """
-    best: dict[Mode, ModeRay] = {}
-    for ray in sorted(found.rays, key=lambda r: r.level_db):
-        if ray.absorption_db <= GREATEST_ABSORPTION_DB:
-            best[ray.wave] = ray
-    return {m: best[m] for m in MODES if m in best}
-
-
 def _antenna(
     station: Station, frequency: float, found: ModesFound, receiver: Place
 ) -> AntennaOnPath | None:
-    leading = leading_rays(found)
-    here = at_antenna(leading, receiver, frequency)
-    return None if here is None else antenna_on_path(station, here, leading, receiver)
+    here = at_antenna(strongest(found.rays), receiver, frequency)
+    relay = None if here is None else relay_at(station, frequency)
+    return None if here is None or relay is None else antenna_on_path(relay, here)
 
 
 def _end(place: Place) -> End:

@@ -22,9 +22,9 @@ from magion.antenna.response import (
     element_lengths,
     fade_depth_db,
     gain,
+    hand_gains,
     joined,
     network_of,
-    overhead_rejection_db,
     power_shares,
     rejection_db,
     without_each_cause,
@@ -235,6 +235,8 @@ class AtAntenna:
     waves : tuple of IncidentWave
         Ordinary and extraordinary; one that does not arrive is taken from the
         direction of the other, with the shape that it would have there.
+    others : tuple of ndarray of complex, shape (2,)
+        Of each direction, the state of the wave that is not this one [1].
     arrives : tuple of bool
         Which of them arrive.
     level_db : tuple of float
@@ -243,6 +245,7 @@ class AtAntenna:
 
     frequency: float
     waves: tuple[IncidentWave, IncidentWave]
+    others: tuple[ComplexArray, ComplexArray]
     arrives: tuple[bool, bool]
     level_db: tuple[float, float]
 
@@ -304,10 +307,12 @@ def at_antenna(leading: dict[Mode, ModeRay], receiver: Place, frequency: float) 
     pairs = {mode: incident(ray, receiver) for mode, ray in leading.items()}
     anyone = next(iter(pairs.values()))
     ordinary, extraordinary = (pairs.get(mode, anyone)[mode] for mode in MODES)
+    others = [pairs.get(m, anyone)[MODES[1 - i]].state for i, m in enumerate(MODES)]
     levels = [leading[m].level_db if m in leading else -math.inf for m in MODES]
     return AtAntenna(
         frequency=frequency,
         waves=(ordinary, extraordinary),
+        others=(others[0], others[1]),
         arrives=(MODES[0] in leading, MODES[1] in leading),
         level_db=(levels[0], levels[1]),
     )
@@ -351,96 +356,188 @@ def _best_to_send(positions: tuple[PositionOnPath, ...], mode: Mode) -> Position
     return able[int(best_position(wanted, other))][0]
 
 
-def _on_path(
-    station: Station,
-    position: RelayPosition,
-    network: Network,
-    lengths: tuple[ComplexArray, ComplexArray],
-    here: AtAntenna,
-    others: tuple[ComplexArray, ComplexArray],
-) -> PositionOnPath:
-    f = here.frequency
-    totals = [joined(network.current[:, 0], length) for length in lengths]
-    taken = [gain(t, w.state, f) for t, w in zip(totals, here.waves, strict=True)]
-    sent: list[float | None] = [None, None]
-    share = None
-    if station.can_transmit:
-        powers = [
-            power_shares(t, w.state, o, f)
-            for t, w, o in zip(totals, here.waves, others, strict=True)
-        ]
-        sent = [float(decibels(p)) for p in powers]
-        share = float(powers[0] / (powers[0] + powers[1]))
-    overhead = float(overhead_rejection_db(station, position, f)[0])
-    hand = None
-    if position.single is None and abs(overhead) >= NO_HAND_DB:
-        hand = Hand.RIGHT if overhead > 0.0 else Hand.LEFT
-    return PositionOnPath(
-        label=position.label,
-        delayed_arm=position.delayed,
-        single_arm=position.single,
-        overhead_hand=hand,
-        ordinary_gain_dbi=float(decibels(taken[0])),
-        extraordinary_gain_dbi=float(decibels(taken[1])),
-        ordinary_over_extraordinary_db=float(rejection_db(*taken)),
-        ordinary_sent_dbi=sent[0],
-        extraordinary_sent_dbi=sent[1],
-        ordinary_share=share,
-    )
-
-
-def antenna_on_path(
-    station: Station, here: AtAntenna, leading: dict[Mode, ModeRay], receiver: Place
-) -> AntennaOnPath | None:
-    """What the antenna makes of both waves, and what limits it.
+@dataclass(frozen=True, slots=True, kw_only=True)
+class RelayAt:
+    """A station's relay at one frequency.
 
     Parameters
     ----------
     station : Station
-        The station, at the receiver.
-    here : AtAntenna
-        The waves.
-    leading : dict
-        Mode to the strongest ray of that wave, of those that arrive.
-    receiver : Place
-        The receiver.
+        The station.
+    frequency : float
+        Frequency [Hz].
+    networks : dict
+        Network of every relay position and of every arm alone.
+    hands : dict
+        Hand that each favours from overhead; None where it has none.
+    """
+
+    station: Station
+    frequency: float
+    networks: dict[RelayPosition, Network]
+    hands: dict[RelayPosition, Hand | None]
+
+    @property
+    def arms(self) -> tuple[RelayPosition, ...]:
+        """Every arm alone."""
+        return _alone(self.station)
+
+
+def _alone(station: Station) -> tuple[RelayPosition, ...]:
+    return tuple(RelayPosition(label=a.name, single=a.name) for a in station.antenna.arms)
+
+
+def relay_at(station: Station, frequency: float) -> RelayAt | None:
+    """Solve a station's feed at one frequency.
+
+    Parameters
+    ----------
+    station : Station
+        The station.
+    frequency : float
+        Frequency [Hz].
 
     Returns
     -------
-    AntennaOnPath or None
+    RelayAt or None
         None where the elements' impedance is not known.
     """
-    f = here.frequency
-    singles = tuple(RelayPosition(label=a.name, single=a.name) for a in station.antenna.arms)
-    nets = {p: network_of(station, p, f) for p in (*station.relay, *singles)}
-    if any(not np.isfinite(n.current).all() for n in nets.values()):
-        return None
-    lengths = tuple(element_lengths(station, f, w.azimuth, w.elevation) for w in here.waves)
-    # Of the wave that goes back along each ray, the field turns as it did coming.
-    pairs = {mode: incident(ray, receiver) for mode, ray in leading.items()}
-    anyone = next(iter(pairs.values()))
-    others = tuple(pairs.get(m, anyone)[MODES[1 - i]].state for i, m in enumerate(MODES))
-    found = {
-        p: _on_path(station, p, n, (lengths[0], lengths[1]), here, (others[0], others[1]))
-        for p, n in nets.items()
-    }
-    positions = tuple(found[p] for p in station.relay)
-    arms = tuple(found[p] for p in singles)
+    networks, hands = {}, {}
+    length = element_lengths(station, np.array([frequency]), 0.0, 0.5 * math.pi)
+    for position in (*station.relay, *_alone(station)):
+        network = network_of(station, position, frequency)
+        if not np.isfinite(network.current).all():
+            return None
+        right, left = hand_gains(joined(network.current, length), frequency)
+        overhead = float(rejection_db(right, left)[0])
+        hand = Hand.RIGHT if overhead > 0.0 else Hand.LEFT
+        told = position.single is None and abs(overhead) >= NO_HAND_DB
+        networks[position], hands[position] = network, hand if told else None
+    return RelayAt(station=station, frequency=frequency, networks=networks, hands=hands)
+
+
+def positions_on_path(relay: RelayAt, here: AtAntenna) -> dict[RelayPosition, PositionOnPath]:
+    """What every relay position, and every arm alone, makes of both waves.
+
+    Parameters
+    ----------
+    relay : RelayAt
+        The relay at the frequency.
+    here : AtAntenna
+        The waves.
+
+    Returns
+    -------
+    dict
+        Position to what it makes of them.
+    """
+    f, station = relay.frequency, relay.station
+    lengths = [element_lengths(station, f, w.azimuth, w.elevation) for w in here.waves]
+    found = {}
+    for position, network in relay.networks.items():
+        totals = [joined(network.current[:, 0], length) for length in lengths]
+        taken = [gain(t, w.state, f) for t, w in zip(totals, here.waves, strict=True)]
+        sent: list[float | None] = [None, None]
+        share = None
+        if station.can_transmit:
+            powers = [
+                power_shares(t, w.state, o, f)
+                for t, w, o in zip(totals, here.waves, here.others, strict=True)
+            ]
+            sent = [float(decibels(p)) for p in powers]
+            share = float(powers[0] / (powers[0] + powers[1]))
+        found[position] = PositionOnPath(
+            label=position.label,
+            delayed_arm=position.delayed,
+            single_arm=position.single,
+            overhead_hand=relay.hands[position],
+            ordinary_gain_dbi=float(decibels(taken[0])),
+            extraordinary_gain_dbi=float(decibels(taken[1])),
+            ordinary_over_extraordinary_db=float(rejection_db(*taken)),
+            ordinary_sent_dbi=sent[0],
+            extraordinary_sent_dbi=sent[1],
+            ordinary_share=share,
+        )
+    return found
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Choice:
+    """What to take, and on which relay position.
+
+    Parameters
+    ----------
+    wave : Mode
+        The wave to take.
+    receive : PositionOnPath
+        Position to receive it on.
+    send : PositionOnPath or None
+        Position to send it back with; None where the station may not transmit.
+    """
+
+    wave: Mode
+    receive: PositionOnPath
+    send: PositionOnPath | None
+
+
+def choice(positions: tuple[PositionOnPath, ...], here: AtAntenna) -> Choice:
+    """The wave to take and its relay positions.
+
+    Parameters
+    ----------
+    positions : tuple of PositionOnPath
+        Relay positions.
+    here : AtAntenna
+        The waves.
+
+    Returns
+    -------
+    Choice
+        The stronger wave at the antenna, each in its best position; within
+        3 dB, the ordinary.
+    """
     both = all(here.arrives)
     wave = _stronger(positions, here, both)
-    best = position_for(positions, wave, both=both)
-    sender = _best_to_send(positions, wave)
-    chosen = station.relay[positions.index(best)]
+    return Choice(
+        wave=wave,
+        receive=position_for(positions, wave, both=both),
+        send=_best_to_send(positions, wave),
+    )
+
+
+def antenna_on_path(relay: RelayAt, here: AtAntenna) -> AntennaOnPath:
+    """What the antenna makes of both waves, and what limits it.
+
+    Parameters
+    ----------
+    relay : RelayAt
+        The relay of the receiver's station, at the frequency.
+    here : AtAntenna
+        The waves.
+
+    Returns
+    -------
+    AntennaOnPath
+        Every position, the best of them, and why it is no better.
+    """
+    station, f = relay.station, relay.frequency
+    found = positions_on_path(relay, here)
+    positions = tuple(found[p] for p in station.relay)
+    arms = tuple(found[p] for p in relay.arms)
+    chosen = choice(positions, here)
+    wave, best, sender = chosen.wave, chosen.receive, chosen.send
+    both = all(here.arrives)
+    place = station.relay[positions.index(best)]
+    network = relay.networks[place]
     arm = max(arms, key=lambda a: a.gain_dbi(wave))
-    arm_sends = [a.sent_dbi(wave) for a in arms]
     own = None if sender is None else sender.sent_dbi(wave)
-    sent_by_arm = [s for s in arm_sends if s is not None]
+    sent_by_arm = [s for s in (a.sent_dbi(wave) for a in arms) if s is not None]
     gained = None if own is None else own - max(sent_by_arm)
     level = best.gain_dbi(wave) - arm.gain_dbi(wave)
     wanted, other = here.waves if wave is Mode.ORDINARY else here.waves[::-1]
     causes: dict[Cause, float] = {}
-    if chosen.single is None:
-        causes = without_each_cause(station, nets[chosen].current[:, 0], f, wanted, other)
+    if place.single is None:
+        causes = without_each_cause(station, network.current[:, 0], f, wanted, other)
     lead = here.level_db[0] - here.level_db[1] if both else math.nan
     return AntennaOnPath(
         name=station.name,
@@ -461,7 +558,7 @@ def antenna_on_path(
             CauseOnPath(cause=c.value, rejection_without_db=db)
             for c, db in sorted(causes.items(), key=lambda item: -item[1])
         ),
-        network=_feed_on_path(station, nets[chosen], chosen, f),
+        network=_feed_on_path(station, network, place, f),
         positions=positions,
         arms=arms,
         has_hand=any(p.overhead_hand is not None for p in positions),

@@ -89,11 +89,35 @@ def draw(figure: Callable[[], Any], target: Path) -> None:
     InputError
         If the ending is another, or the file cannot be written.
     """
-    from magion.plots.saving import encoded, require_ending
+    from magion.plots.saving import encoded
+
+    ending = require_figure(target)
+    replace_file(target, encoded(figure(), ending))
+
+
+def require_figure(target: Path) -> str:
+    """Refuse a figure's file before work is spent on it.
+
+    Parameters
+    ----------
+    target : Path
+        The file: .png, .svg or .pdf.
+
+    Returns
+    -------
+    str
+        Its ending, without the point.
+
+    Raises
+    ------
+    InputError
+        If the ending is another, or the file cannot be written.
+    """
+    from magion.plots.saving import require_ending
 
     ending = require_ending(target.name)
     require_target(target)
-    replace_file(target, encoded(figure(), ending))
+    return ending
 
 
 def require_target(target: Path) -> None:

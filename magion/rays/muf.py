@@ -135,7 +135,21 @@ def _margins_of(fan: Fan, distance: float) -> tuple[float, float]:
     )
 
 
-def _angles(link: Link, hops: int) -> FloatArray:
+def angles_of_hop(link: Link, hops: int) -> FloatArray:
+    """Launch angles that a nearly level ionosphere needs to reach the receiver.
+
+    Parameters
+    ----------
+    link : Link
+        The path.
+    hops : int
+        Number of hops [1].
+
+    Returns
+    -------
+    ndarray
+        Zenith angles, rising [rad].
+    """
     length = link.distance / hops
     low = max(elevation_of_hop(length, 85e3) - np.radians(2.0), np.radians(0.4))
     high = elevation_of_hop(length, 550e3) + np.radians(4.0)
@@ -199,7 +213,7 @@ def maximum_usable_frequencies(
     Mufs
         Of every ionosphere and wave.
     """
-    angles = default_zenith_angles(2.0) if wide else _angles(link, hops)
+    angles = default_zenith_angles(2.0) if wide else angles_of_hop(link, hops)
     count = guess.size
 
     def margins(trial: FloatArray, refinements: int) -> FloatArray:
