@@ -45,7 +45,6 @@ MUF_STEP_MIN: Final = 30.0
 
 _NEARLY = 0.97
 _DEGREES_PER_HOUR = 15.0
-_MOST_SEARCHED = 24
 
 Progress = Callable[[float], None]
 
@@ -258,10 +257,11 @@ def answer_day(
     scene = scene_of(link, [moments[i] for i in index], given, ratios)
     tell = progress or (lambda share: None)
     tell(0.1)
-    mufs = _mufs(scene, _floats(index * step_min))
+    mufs = interpolated_mufs(scene, _floats(index * step_min), MUF_STEP_MIN)
     tell(0.5)
-    gyro = _gyro_at_peaks(scene, midnight)
-    rays = _rays(scene, frequencies, mufs, lambda share: tell(0.5 + 0.4 * share))
+    gyro = gyro_at_peaks(scene, midnight)
+    rays = rays_of(scene, frequencies, mufs)
+    tell(0.9)
     rows = []
     for f, of_frequency in zip(frequencies, rays, strict=True):
         relay = None if station is None else relay_at(station, f)
@@ -340,12 +340,27 @@ def _caveats(
     return tuple(caveats)
 
 
-def _mufs(scene: Scene, minutes: FloatArray) -> PathMufs:
-    """MUFs of every hour of a scene; between traced ones their ratio to foF2 is interpolated."""
+def interpolated_mufs(scene: Scene, minutes: FloatArray, least_step_min: float) -> PathMufs:
+    """MUFs of every hour of a scene; between traced ones their ratio to foF2 is interpolated.
+
+    Parameters
+    ----------
+    scene : Scene
+        The path.
+    minutes : ndarray, shape (hours,)
+        Minutes of the day [min].
+    least_step_min : float
+        How far apart MUFs are traced [min].
+
+    Returns
+    -------
+    PathMufs
+        Of every hour.
+    """
     hops = hop_counts(scene.link.distance)
     stride = 1
     if minutes.size > 2:
-        stride = max(1, int(MUF_STEP_MIN / float(np.min(np.diff(minutes))) + 1e-9))
+        stride = max(1, int(least_step_min / float(np.min(np.diff(minutes))) + 1e-9))
     chosen = np.unique(np.concatenate([np.arange(0, minutes.size, stride), [minutes.size - 1]]))
     if chosen.size == minutes.size:
         return path_mufs(scene, hops)
@@ -368,19 +383,50 @@ def _mufs(scene: Scene, minutes: FloatArray) -> PathMufs:
     return PathMufs(any_layer=found[0], f_region=found[1])
 
 
-def _gyro_at_peaks(scene: Scene, midnight: datetime) -> FloatArray:
+def gyro_at_peaks(scene: Scene, when: datetime) -> FloatArray:
+    """Gyrofrequency over the midpoint at the peak of F2, hour by hour.
+
+    Parameters
+    ----------
+    scene : Scene
+        The path.
+    when : datetime
+        Instant of the field.
+
+    Returns
+    -------
+    ndarray, shape (hours,)
+        Gyrofrequencies [Hz].
+    """
     latitude, longitude = scene.link.point(0.5)
     heights = np.array([o.hmf2 for o in scene.overheads])
     flux = field_at(
-        np.full(heights.shape, latitude), np.full(heights.shape, longitude), heights, midnight
+        np.full(heights.shape, latitude), np.full(heights.shape, longitude), heights, when
     )
     return gyrofrequency(flux_density(flux))
 
 
-def _rays(
-    scene: Scene, frequencies: list[float], mufs: PathMufs, tell: Progress
+def rays_of(
+    scene: Scene, frequencies: list[float], mufs: PathMufs, searched: int = 24
 ) -> list[list[dict[Mode, ModeRay]]]:
-    """The leading rays of every frequency and hour."""
+    """The leading rays of every frequency and hour.
+
+    Parameters
+    ----------
+    scene : Scene
+        The path.
+    frequencies : list of float
+        Frequencies [Hz].
+    mufs : PathMufs
+        MUFs of every hour; what lies well above them is not traced.
+    searched : int
+        How many cases without a ray below the MUF are searched patiently [1].
+
+    Returns
+    -------
+    list of list of dict
+        For each frequency and hour the strongest ray of each wave that arrives.
+    """
     hours = len(scene.overheads)
     hops = hop_counts(scene.link.distance)[0]
     wanted, missing = [], []
@@ -397,9 +443,8 @@ def _rays(
         found.setdefault((f, hour), []).extend(rays)
         if not rays and float(mufs.any_layer[MODES.index(mode), hour]) >= f:
             missing.append((f, hour))
-    tell(0.8)
     # A wave below its MUF without a ray in the coarse fan is looked for patiently.
-    for f, hour in list(dict.fromkeys(missing))[:_MOST_SEARCHED]:
+    for f, hour in list(dict.fromkeys(missing))[:searched]:
         modes = MODES if f > scene.gyro_limit else (Mode.ORDINARY,)
         found[f, hour] = [
             r for r in find_modes(scene, f, modes, hour).rays if len(set(r.sequence)) == 1
@@ -435,7 +480,7 @@ def _of_frequency(
                     numbers[name][i, step] = value
                 hands[i][step] = hand_of(leading[mode].down.waves()[i]).value
         state[step] = state_of(MODES[0] in leading, MODES[1] in leading)
-        probability[:, step] = _chances(scene, frequency, leading, mufs, gyro, k)
+        probability[:, step] = chances_at(scene, frequency, leading, mufs, gyro, k)
         here = at_antenna(leading, receiver, frequency)
         if here is None:
             continue
@@ -500,7 +545,7 @@ def _stronger(leading: dict[Mode, ModeRay]) -> Mode:
     return Mode.EXTRAORDINARY if lead > 3.0 else Mode.ORDINARY
 
 
-def _chances(
+def chances_at(
     scene: Scene,
     frequency: float,
     leading: dict[Mode, ModeRay],
@@ -508,7 +553,29 @@ def _chances(
     gyro: FloatArray,
     hour: int,
 ) -> FloatArray:
-    """Probabilities of the states at one hour, in the order of STATES."""
+    """Probabilities of the states at one hour.
+
+    Parameters
+    ----------
+    scene : Scene
+        The path.
+    frequency : float
+        Frequency [Hz].
+    leading : dict
+        Mode to ray, of the waves that arrive.
+    mufs : PathMufs
+        MUFs of every hour.
+    gyro : ndarray, shape (hours,)
+        From :func:`gyro_at_peaks` [Hz].
+    hour : int
+        Index of the hour [1].
+
+    Returns
+    -------
+    ndarray, shape (4,)
+        In the order of :data:`magion.answers.certainty.STATES`; NaN where the
+        uncertainty of foF2 is not known [1].
+    """
     overhead = scene.overheads[hour]
     if overhead.fof2_error is None:
         return np.full(4, np.nan)

@@ -507,7 +507,8 @@ def _headline(
         )
     named = [f"{p.label} hears {p.hand.value}" for p in positions if p.hand]
     worst = min(p.rejection_db or 0.0 for p in positions if p.hand)
-    return f"From overhead {', '.join(named)}; the other hand is {worst:.0f} dB down."
+    down = f"{worst:.0f}" if worst < 59.5 else "60 or more"
+    return f"From overhead {', '.join(named)}; the other hand is {down} dB down."
 
 
 def _band(station: Station, position: RelayPosition, rows: FloatArray) -> tuple[BandRow, ...]:

@@ -42,6 +42,7 @@ MOST_MIXED_HOPS: Final = 2
 Waves = tuple[Mode, ...]
 
 _PURE_TOLERANCE = 30.0
+_PURE_HOMED_TOLERANCE = 0.5
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -264,7 +265,10 @@ def pure_rays(
         tolerance=_PURE_TOLERANCE,
     )
     rays: list[list[ModeRay]] = [[] for _ in wanted]
-    for ray in home(scene.link, specs, scene.medium, scene.field, found):
+    homed = home(
+        scene.link, specs, scene.medium, scene.field, found, tolerance=_PURE_HOMED_TOLERANCE
+    )
+    for ray in homed:
         f, hour, mode = wanted[ray.spec]
         rays[ray.spec].append(_mode_ray(scene, f, hour, (mode,) * hops, ray, coupled=False))
     return [tuple(r) for r in rays]

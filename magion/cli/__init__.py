@@ -12,6 +12,7 @@ from magion.errors import MagionError
 _COMMANDS = {
     "path": "which hand each wave arrives with on one path",
     "day": "both waves of a path through a day, and when to move the relay",
+    "net": "one hand and one frequency for many partners",
     "station": "sense versus frequency at a place: the table for the wall",
     "feed": "build sheet of the 90-degree line, and what the feed does across a band",
     "antenna": "response of an antenna to both hands over the sky",

@@ -166,6 +166,24 @@ class Range(click.ParamType):
         return tuple(round(first + i * step, 9) for i in range(count))
 
 
+class PartnersType(click.ParamType):
+    """A file of partners; their names become places."""
+
+    name = "file"
+
+    def convert(self, value: Any, param: Any, ctx: Any) -> "tuple[Place, ...]":
+        """Read the file."""
+        if isinstance(value, tuple):
+            return value
+        from magion.formats.partners import read_partners
+
+        partners = read_partners(value)
+        if ctx:
+            named = {p.name.casefold(): p for p in partners if p.name}
+            ctx.meta.setdefault(_NAMED, {}).update(named)
+        return partners
+
+
 NUMBER = Number()
 RANGE = Range()
 INSTANT = Instant()

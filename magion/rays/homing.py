@@ -166,6 +166,8 @@ def home(
     medium: Medium,
     field: MagneticField | None,
     found: list[Fan] | None = None,
+    *,
+    tolerance: float = HOMED_TOLERANCE,
 ) -> list[HomedRay]:
     """All rays from the transmitter to the receiver.
 
@@ -179,6 +181,8 @@ def home(
         As for :func:`magion.rays.batch.trace`.
     found : list of Fan, optional
         Fans of these specs, if they are there already.
+    tolerance : float
+        Error of position accepted in one step of a homed ray [m].
 
     Returns
     -------
@@ -192,10 +196,10 @@ def home(
     trials = (link, specs, medium, field)
     # One step of Newton's method is enough for most; the others are searched for patiently.
     near, far = _stepped(start, *_probe(start, *trials, tolerance=_SEARCH_TOLERANCE)[1:])
-    rays, left = _fine_passes(near, *trials)
+    rays, left = _fine_passes(near, *trials, tolerance)
     hard = start.take(far | _indices_in(start, near, left))
     if hard.spec.size:
-        rays += _fine_passes(_converged(link, hard, specs, medium, field), *trials)[0]
+        rays += _fine_passes(_converged(link, hard, specs, medium, field), *trials, tolerance)[0]
     rays.sort(key=lambda r: (r.spec, -r.zenith_vector[0]))
     return [r for i, r in enumerate(rays) if not any(_same(r, q) for q in rays[:i])]
 
@@ -271,7 +275,12 @@ def _stepped(search: _Search, gap: FloatArray, slope: FloatArray) -> tuple[_Sear
 
 
 def _fine_passes(
-    search: _Search, link: Link, specs: Specs, medium: Medium, field: MagneticField | None
+    search: _Search,
+    link: Link,
+    specs: Specs,
+    medium: Medium,
+    field: MagneticField | None,
+    tolerance: float,
 ) -> tuple[list[HomedRay], BoolArray]:
     """Trace candidates finely until they come down at the receiver.
 
@@ -284,7 +293,7 @@ def _fine_passes(
         if pending.size == 0:
             break
         ends, gap, slope = _probe(
-            search, link, specs, medium, field, tolerance=HOMED_TOLERANCE, keep_tracks=True
+            search, link, specs, medium, field, tolerance=tolerance, keep_tracks=True
         )
         miss = np.hypot(*gap)
         arrived = miss <= LARGEST_MISS  # False where the ray did not land

@@ -132,11 +132,14 @@ def _position(position: PositionInFeed, made: str) -> str:
     if position.hand is None:
         return line + f"no hand, the two differ by {position.rejection_db:.1f} dB"
     hand = position.hand.value
-    return line + f"hears and sends {hand}, the other {position.rejection_db:.0f} dB down"
+    down = f"{position.rejection_db:.0f}" if position.rejection_db < 59.5 else "60 or more"
+    return line + f"hears and sends {hand}, the other {down} dB down"
 
 
 def _cell(value: float | None, form: str, wide: int) -> str:
-    return f"{'-' if value is None else format(value, form):>{wide}}"
+    # Adding zero after rounding leaves no "-0.0".
+    shown = "-" if value is None else format(round(value, int(form[-2])) + 0.0, form)
+    return f"{shown:>{wide}}"
 
 
 def _band_rows(answer: FeedAnswer) -> list[str]:
@@ -157,7 +160,7 @@ def _band_rows(answer: FeedAnswer) -> list[str]:
 def _band_row(row: BandRow) -> str:
     ohm = "-"
     if row.resistance_ohm is not None and row.reactance_ohm is not None:
-        ohm = f"{row.resistance_ohm:.0f}{row.reactance_ohm:+.0f}j"
+        ohm = f"{row.resistance_ohm:.0f}{round(row.reactance_ohm):+d}j"
     apart = None if row.phase_deg is None else -row.phase_deg
     return (
         f"  {row.frequency_mhz:7.3f}{_cell(row.line_deg, '.1f', 7)}{ohm:>14}"
