@@ -132,7 +132,7 @@ def _position(position: PositionInFeed, made: str) -> str:
     if position.hand is None:
         return line + f"no hand, the two differ by {position.rejection_db:.1f} dB"
     hand = position.hand.value
-    down = f"{position.rejection_db:.0f}" if position.rejection_db < 59.5 else "60 or more"
+    down = f"{position.rejection_db:.0f}" if position.rejection_db < 59.5 else "60+"
     return line + f"hears and sends {hand}, the other {down} dB down"
 
 
