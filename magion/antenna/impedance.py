@@ -1,9 +1,10 @@
 """Feed-point impedance of the elements: measured, or from a table.
 
-The table comes from a method-of-moments engine with exact ground and ships
-with the package; how it was made stands in ``data/README.md`` beside it. A
-Fresnel-weighted image gives wrong resistances below about 0.2 wavelengths, so
-it is not used here. Outside the table the impedance is NaN: it is not guessed.
+The table comes from a moment method with the exact Sommerfeld ground and ships
+with the package; how it was made, and what an independent engine says to it,
+stands in ``data/README.md`` beside it. A Fresnel-weighted image gives wrong
+resistances below about 0.2 wavelengths, so it is not used here. Outside the
+table the impedance is NaN: it is not guessed.
 """
 
 from functools import lru_cache
