@@ -19,7 +19,7 @@ from magion.answers.certainty import (
     state_of,
 )
 from magion.answers.inputs import IonosphereInput, instant, require_frequency
-from magion.answers.modes import ModeRay, find_modes, hop_counts, pure_rays, strongest
+from magion.answers.modes import ModeRay, find_modes, hop_counts, pure_rays, stronger, strongest
 from magion.answers.reception import (
     RelayAt,
     at_antenna,
@@ -407,7 +407,11 @@ def gyro_at_peaks(scene: Scene, when: datetime) -> FloatArray:
 
 
 def rays_of(
-    scene: Scene, frequencies: list[float], mufs: PathMufs, searched: int = 24
+    scene: Scene,
+    frequencies: list[float],
+    mufs: PathMufs,
+    searched: int = 24,
+    only: set[tuple[float, int]] | None = None,
 ) -> list[list[dict[Mode, ModeRay]]]:
     """The leading rays of every frequency and hour.
 
@@ -421,6 +425,8 @@ def rays_of(
         MUFs of every hour; what lies well above them is not traced.
     searched : int
         How many cases without a ray below the MUF are searched patiently [1].
+    only : set of (float, int), optional
+        Frequencies [Hz] and hours that are wanted; all of them if not given.
 
     Returns
     -------
@@ -434,6 +440,8 @@ def rays_of(
         for hour in range(hours):
             for i, mode in enumerate(MODES):
                 if mode is Mode.EXTRAORDINARY and f <= scene.gyro_limit:
+                    continue
+                if only is not None and (f, hour) not in only:
                     continue
                 muf = float(mufs.any_layer[i, hour])
                 if math.isnan(muf) or muf >= _NEARLY * f:
@@ -492,7 +500,7 @@ def _of_frequency(
             transmit[step] = None if best.send is None else best.send.label
             rejection[step] = best.receive.rejection_db(taken)
         else:
-            taken = _stronger(leading)
+            taken = stronger(leading)
             hand = Hand(hands[MODES.index(taken)][step])
             receive[step], transmit[step] = hand.value, hand.opposite.value
         wave[step] = taken.value
@@ -535,14 +543,6 @@ def _numbers_of(ray: ModeRay, receiver: Place) -> dict[str, float]:
         float(axial_ratio_db(own)),
     )
     return dict(zip(_NUMBERS, values, strict=True))
-
-
-def _stronger(leading: dict[Mode, ModeRay]) -> Mode:
-    """The stronger wave; within 3 dB, the ordinary."""
-    if len(leading) == 1:
-        return next(iter(leading))
-    lead = leading[Mode.EXTRAORDINARY].level_db - leading[Mode.ORDINARY].level_db
-    return Mode.EXTRAORDINARY if lead > 3.0 else Mode.ORDINARY
 
 
 def chances_at(

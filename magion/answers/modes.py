@@ -233,6 +233,25 @@ def strongest(rays: Iterable[ModeRay]) -> dict[Mode, ModeRay]:
     return {m: best[m] for m in MODES if m in best}
 
 
+def stronger(leading: dict[Mode, ModeRay]) -> Mode:
+    """The wave to take: the stronger; within 3 dB, the ordinary.
+
+    Parameters
+    ----------
+    leading : dict
+        Mode to ray, of at least one wave that arrives.
+
+    Returns
+    -------
+    Mode
+        That wave.
+    """
+    if len(leading) == 1:
+        return next(iter(leading))
+    lead = leading[Mode.EXTRAORDINARY].level_db - leading[Mode.ORDINARY].level_db
+    return Mode.EXTRAORDINARY if lead > 3.0 else Mode.ORDINARY
+
+
 def pure_rays(
     scene: Scene, wanted: Sequence[tuple[float, int, Mode]], hops: int
 ) -> list[tuple[ModeRay, ...]]:

@@ -16,6 +16,7 @@ _COMMANDS = {
     "station": "sense versus frequency at a place: the table for the wall",
     "feed": "build sheet of the 90-degree line, and what the feed does across a band",
     "antenna": "response of an antenna to both hands over the sky",
+    "relay": "from a log of readings on both hands: is the relay labelled right",
     "field": "geomagnetic field, dip, declination, gyrofrequency at a place",
     "wave": "both characteristic waves at one point of plasma",
 }

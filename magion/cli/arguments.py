@@ -190,6 +190,23 @@ INSTANT = Instant()
 PLACE = PlaceType()
 
 
+def named_places(ctx: click.Context) -> "dict[str, Place]":
+    """Names that the station and partner files of a command gave to places.
+
+    Parameters
+    ----------
+    ctx : click.Context
+        The command's context.
+
+    Returns
+    -------
+    dict
+        Name in lower case to place.
+    """
+    found: dict[str, Place] = ctx.meta.get(_NAMED, {})
+    return found
+
+
 def flat(ranges: tuple[tuple[float, ...], ...]) -> tuple[float, ...] | None:
     """Values of an option that may be given several times.
 
