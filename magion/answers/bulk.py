@@ -17,7 +17,7 @@ import numpy as np
 from magion.answers.certainty import path_mufs, state_of
 from magion.answers.day import chances_at, gyro_at_peaks, rays_of
 from magion.answers.inputs import IonosphereInput
-from magion.answers.modes import hop_counts, stronger
+from magion.answers.modes import hop_counts, require_length, stronger
 from magion.answers.reception import AtAntenna, at_antenna
 from magion.answers.scene import scene_of
 from magion.geometry import Place
@@ -146,13 +146,14 @@ def answer_path_day(job: PathDay, ionosphere: IonosphereInput) -> tuple[Found, .
     Raises
     ------
     InputError
-        If the readings do not cover an instant.
+        If the readings do not cover an instant, or the path is too long.
     OutsideModelError
         If the date is outside the field model.
     """
     transmitter = Place(latitude_deg=job.transmitter[0], longitude_deg=job.transmitter[1])
     receiver = Place(latitude_deg=job.receiver[0], longitude_deg=job.receiver[1])
     link = link_between(transmitter, receiver)
+    require_length(link)
     midnight = datetime(*job.date, tzinfo=UTC)
     minutes = sorted({q.minute for q in job.queries})
     moments = [midnight + timedelta(minutes=m) for m in minutes]

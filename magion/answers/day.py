@@ -19,7 +19,15 @@ from magion.answers.certainty import (
     state_of,
 )
 from magion.answers.inputs import IonosphereInput, instant, require_frequency
-from magion.answers.modes import ModeRay, find_modes, hop_counts, pure_rays, stronger, strongest
+from magion.answers.modes import (
+    ModeRay,
+    find_modes,
+    hop_counts,
+    pure_rays,
+    require_length,
+    stronger,
+    strongest,
+)
 from magion.answers.reception import (
     RelayAt,
     at_antenna,
@@ -239,6 +247,7 @@ def answer_day(
             "the solar flux"
         )
     link = link_between(transmitter, receiver)
+    require_length(link)
     count = int(24.0 * 60.0 / step_min - 1e-9) + 1
     midnight = moment.replace(hour=0, minute=0, second=0, microsecond=0)
     moments = [midnight + timedelta(minutes=step_min * i) for i in range(count)]

@@ -10,6 +10,7 @@ import numpy as np
 
 from magion.answers.scene import Overhead, Scene
 from magion.arrays import ComplexArray, FloatArray, cross, unit
+from magion.errors import InputError
 from magion.ground import AVERAGE, Ground, reflection
 from magion.ionosphere.layers import SPORADIC_HEIGHT
 from magion.rays.chain import Specs, specs_of
@@ -23,6 +24,7 @@ from magion.rays.exit import (
 )
 from magion.rays.fans import Fan, default_zenith_angles, fans
 from magion.rays.homing import HomedRay, home
+from magion.rays.link import Link
 from magion.rays.losses import absorption, phase_path_change
 from magion.rays.muf import LONGEST_HOP, angles_of_hop, branches
 from magion.waves import MODES, Mode, index_difference, phase_to_go, wave_axes
@@ -122,6 +124,30 @@ class ModesFound:
     rays: tuple[ModeRay, ...]
     hops: tuple[int, ...]
     fans: dict[Mode, Fan]
+
+
+LONGEST_PATH: Final = 12_000e3
+"""Longest path whose hops are traced [m]."""
+
+
+def require_length(link: Link) -> None:
+    """Refuse a path that is too long.
+
+    Parameters
+    ----------
+    link : Link
+        The path.
+
+    Raises
+    ------
+    InputError
+        If it is longer than 12,000 km.
+    """
+    if link.distance > LONGEST_PATH:
+        raise InputError(
+            f"the path is {link.distance / 1e3:.0f} km long; accepted: up to "
+            f"{LONGEST_PATH / 1e3:.0f} km, what hops are traced for"
+        )
 
 
 def hop_counts(distance: float, reach: float = LONGEST_HOP) -> tuple[int, ...]:

@@ -11,7 +11,7 @@ import numpy as np
 from magion.answers.certainty import PathMufs, state_of
 from magion.answers.day import Progress, chances_at, gyro_at_peaks, interpolated_mufs, rays_of
 from magion.answers.inputs import IonosphereInput, instant, require_frequency
-from magion.answers.modes import ModeRay
+from magion.answers.modes import ModeRay, require_length
 from magion.answers.reception import RelayAt, at_antenna, positions_on_path, relay_at
 from magion.answers.scene import Scene, scene_of
 from magion.antenna.station import Station
@@ -261,6 +261,7 @@ def answer_net(
     source, caveats = "", []
     for k, partner in enumerate(partners):
         link = link_between(partner, control)
+        require_length(link)
         name = _name(partner)
         if link.distance < _NEAREST:
             raise InputError(f"partner {name} is at net control itself; accepted: another place")

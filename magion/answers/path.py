@@ -16,6 +16,7 @@ from magion.answers.modes import (
     ModesFound,
     doppler_of_layers,
     find_modes,
+    require_length,
     strongest,
 )
 from magion.answers.reception import AntennaOnPath, antenna_on_path, at_antenna, relay_at
@@ -37,7 +38,6 @@ from magion.answers.records import (
 from magion.answers.scene import Scene, scene_of, with_changed_layers
 from magion.antenna.station import Station
 from magion.constants import EARTH_RADIUS, SPEED_OF_LIGHT
-from magion.errors import InputError
 from magion.field import MODEL, declination, dip, field_at, flux_density, gyrofrequency
 from magion.geometry import Place, azimuth_elevation, great_circle, local_axes
 from magion.polarization import (
@@ -62,7 +62,6 @@ from magion.waves import (
 )
 
 FIELD_HEIGHT_KM: Final = 300.0
-LONGEST_PATH_KM: Final = 12_000.0
 
 
 def answer_path(
@@ -111,11 +110,7 @@ def answer_path(
     moment = instant(when)
     given = ionosphere or IonosphereInput()
     link = link_between(transmitter, receiver)
-    if link.distance > LONGEST_PATH_KM * 1e3:
-        raise InputError(
-            f"the path is {link.distance / 1e3:.0f} km long; accepted: up to "
-            f"{LONGEST_PATH_KM:.0f} km, what hops are traced for"
-        )
+    require_length(link)
     scene = scene_of(link, [moment], given)
     overhead = scene.overheads[0]
     modes = _modes_at(scene, frequency)

@@ -17,6 +17,7 @@ _COMMANDS = {
     "feed": "build sheet of the 90-degree line, and what the feed does across a band",
     "antenna": "response of an antenna to both hands over the sky",
     "relay": "from a log of readings on both hands: is the relay labelled right",
+    "sweep": "the answer for every row of a log or of a list of paths",
     "field": "geomagnetic field, dip, declination, gyrofrequency at a place",
     "wave": "both characteristic waves at one point of plasma",
 }
