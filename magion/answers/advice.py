@@ -16,6 +16,7 @@ from magion.answers.certainty import (
 from magion.answers.reception import AntennaOnPath, PositionOnPath, position_for
 from magion.answers.records import Advice, Fading, Rejection, WaveOnPath
 from magion.answers.scene import Scene
+from magion.antenna.impedance import unknown_impedance
 from magion.antenna.response import S_UNIT_DB
 from magion.antenna.station import Station
 from magion.constants import EARTH_RADIUS
@@ -101,7 +102,7 @@ def advice_on(known: Known) -> Advice:
             extraordinary=_best_rejection(antenna, Mode.EXTRAORDINARY),
         )
         separation = _separation(antenna, waves)
-        limited = antenna.causes[0].cause if antenna.causes and antenna.has_hand else None
+        limited = antenna.limited_by if antenna.has_hand else None
     return Advice(
         state=state,
         state_probabilities=chances,
@@ -242,8 +243,7 @@ def _relay_headline(
         put_down = f"puts the other down by {db:.0f} dB ({db / S_UNIT_DB:.1f} S-units)"
         if db < _CLEARLY_BETTER_DB:
             put_down = "cannot put the other down"
-        cause = antenna.causes[0].cause if antenna.causes else None
-        limit = f", limited most by {_with_article(cause)}" if cause else ""
+        limit = f", limited most by the {antenna.limited_by}" if antenna.limited_by else ""
         line += f", {put_down}{limit}; {company}"
     else:
         line += f"; {company}"
@@ -265,10 +265,6 @@ def _name(hand: Hand | None) -> str:
     return "-" if hand is None else hand.value
 
 
-def _with_article(cause: str) -> str:
-    return f"the {cause}"
-
-
 def _station_caveats(known: Known, station: Station) -> tuple[str, ...]:
     """What the station's antenna gives cause to say."""
     caveats: list[str] = []
@@ -286,10 +282,7 @@ def _station_caveats(known: Known, station: Station) -> tuple[str, ...]:
     if antenna is None:
         if any(w.arrives for w in known.waves):
             caveats.append(
-                f"The elements' impedance at {known.frequency / 1e6:.3f} MHz is outside the "
-                "shipped table (legs of 0.15 to 0.35 wavelengths), and it is not guessed: give "
-                "resistance_ohm, reactance_ohm and quality_factor in [antenna] for a relay "
-                "position."
+                f"No relay position is given: {unknown_impedance(station, known.frequency)}."
             )
         return tuple(caveats)
     if station.antenna.kind.is_loops and station.antenna.measured is None:
@@ -312,26 +305,27 @@ def _station_caveats(known: Known, station: Station) -> tuple[str, ...]:
             "better: the position is chosen by response, not by letter."
         )
     if both:
-        caveats += _circular_is_wrong(antenna, chosen, known.waves)
+        caveats += _circular_is_wrong(antenna, known.waves)
     return tuple(caveats)
 
 
-def _circular_is_wrong(
-    antenna: AntennaOnPath, chosen: PositionOnPath, waves: tuple[WaveOnPath, WaveOnPath]
-) -> list[str]:
+def _circular_is_wrong(antenna: AntennaOnPath, waves: tuple[WaveOnPath, WaveOnPath]) -> list[str]:
     """A plain sentence where one wire parts the waves better than either hand."""
     mode = antenna.wave
     wire = max(antenna.arms, key=lambda a: a.rejection_db(mode))
     hands = [p.rejection_db(mode) for p in antenna.positions if p.single_arm is None]
     gained = wire.rejection_db(mode) - max(hands, default=math.inf)
-    if gained < _CLEARLY_BETTER_DB:
+    if gained < _CLEARLY_BETTER_DB or wire.rejection_db(mode) < _CLEARLY_BETTER_DB:
         return []
     linear = any((w.axial_ratio_db or math.inf) > LINEAR_LIMIT_DB for w in waves)
     why = "the waves are too linear" if linear else "the waves come in too low"
-    lacking = "" if chosen.single_arm else " (the relay has no such position)"
+    there = any(p.single_arm == wire.label for p in antenna.positions)
+    lacking = "" if there else " (the relay has no such position)"
+    best = max(hands)
+    hand = f"the hands by {best:.0f} dB" if best >= _CLEARLY_BETTER_DB else "the hands do not"
     return [
         f"Circular is the wrong choice here, {why}: arm {wire.label} alone{lacking} puts the "
-        f"other wave down by {wire.rejection_db(mode):.0f} dB, the hands by {max(hands):.0f} dB."
+        f"other wave down by {wire.rejection_db(mode):.0f} dB, {hand}."
     ]
 
 

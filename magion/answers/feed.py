@@ -15,7 +15,7 @@ from magion.antenna.feed import (
     quarter_wave,
     standing_wave_ratio,
 )
-from magion.antenna.impedance import impedance_of, leg_length_of
+from magion.antenna.impedance import impedance_of, leg_length_of, unknown_impedance
 from magion.antenna.response import (
     NO_HAND_DB,
     decibels,
@@ -429,10 +429,7 @@ def _of_station(
     unknown = any(p.rejection_db is None for p in positions)
     caveats = []
     if unknown:
-        caveats.append(
-            f"The elements' impedance at {frequency_mhz:.3f} MHz is outside the shipped table and "
-            "is not guessed: give resistance_ohm, reactance_ohm and quality_factor in [antenna]."
-        )
+        caveats.append(f"The hands cannot be told: {unknown_impedance(station, f)}.")
     if crossed and not has_hand and not unknown:
         caveats.append(
             "Two arms fed in phase or in opposite phase are one dipole turned by 45°. Only a "
@@ -526,7 +523,8 @@ def _band(station: Station, position: RelayPosition, rows: FloatArray) -> tuple[
         ratio = np.full(f.shape, np.nan + 0j)
     else:
         late = arms.index(position.delayed)
-        ratio = network.current[late] / network.current[1 - late]
+        with np.errstate(invalid="ignore", divide="ignore"):
+            ratio = network.current[late] / network.current[1 - late]
     swr = standing_wave_ratio(network.mismatch)
     loss = -decibels(network.fed / (1.0 - network.reflected))
     return tuple(

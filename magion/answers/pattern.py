@@ -8,6 +8,7 @@ from typing import Final
 import numpy as np
 
 from magion.answers.inputs import require_frequency
+from magion.antenna.impedance import unknown_impedance
 from magion.antenna.response import (
     decibels,
     element_lengths,
@@ -148,10 +149,7 @@ def answer_antenna(
         )
     nets = networks(station, f)
     if not all(np.isfinite(n.current).all() for n in nets):
-        raise OutsideModelError(
-            f"the elements' impedance at {frequency_mhz:g} MHz is outside the shipped table and is "
-            "not guessed; give resistance_ohm, reactance_ohm and quality_factor in [antenna]"
-        )
+        raise OutsideModelError(unknown_impedance(station, f))
     az, el = np.meshgrid(np.radians(azimuth), np.radians(elevation))
     lengths = element_lengths(station, f, az, el)
     patterns = []

@@ -35,6 +35,8 @@ from magion.geometry import Place, azimuth_elevation, local_axes, source_axes
 from magion.polarization import Hand
 from magion.waves import MODES, Mode, wave_axes
 
+_GAINED_DB = 0.5
+
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class PositionOnPath:
@@ -192,7 +194,10 @@ class AntennaOnPath:
         Depth of the fades on the better arm alone and in the best position;
         None where one wave arrives [dB].
     causes : tuple of CauseOnPath
-        What limits the rejection, the greatest first; empty for a single arm.
+        What may limit the rejection, the greatest first; empty for a single arm.
+    limited_by : str or None
+        The cause that limits it most; None where the removal of none gains
+        half a decibel.
     network : FeedOnPath
         The feed in the best position.
     positions : tuple of PositionOnPath
@@ -218,6 +223,7 @@ class AntennaOnPath:
     fade_depth_before_db: float | None
     fade_depth_after_db: float | None
     causes: tuple[CauseOnPath, ...]
+    limited_by: str | None
     network: FeedOnPath
     positions: tuple[PositionOnPath, ...]
     arms: tuple[PositionOnPath, ...]
@@ -558,11 +564,20 @@ def antenna_on_path(relay: RelayAt, here: AtAntenna) -> AntennaOnPath:
             CauseOnPath(cause=c.value, rejection_without_db=db)
             for c, db in sorted(causes.items(), key=lambda item: -item[1])
         ),
+        limited_by=_limit(causes, best.rejection_db(wave)),
         network=_feed_on_path(station, network, place, f),
         positions=positions,
         arms=arms,
         has_hand=any(p.overhead_hand is not None for p in positions),
     )
+
+
+def _limit(causes: dict[Cause, float], rejection: float) -> str | None:
+    """The cause whose removal gains most, if it gains anything to speak of."""
+    if not causes:
+        return None
+    most = max(causes, key=lambda c: causes[c])
+    return most.value if causes[most] >= rejection + _GAINED_DB else None
 
 
 def _fades(lead_db: float, position: PositionOnPath) -> float:

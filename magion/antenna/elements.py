@@ -135,8 +135,8 @@ def loop_length(
     Parameters
     ----------
     bearing : float
-        Of the loop's plane on the hot side: a wave from overhead whose field
-        lies along it gives the sign that a dipole of that bearing has [rad].
+        Of the loop's plane on the hot side: the bottom wire runs toward it, and
+        the loop's axis lies 90 degrees to its right [rad].
     height : float
         Of its centre [m].
     ground : Ground or None

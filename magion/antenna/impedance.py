@@ -15,7 +15,7 @@ import numpy as np
 from numpy.typing import ArrayLike
 
 from magion.antenna.elements import HALF_WAVE_LEG
-from magion.antenna.station import Antenna, MeasuredImpedance
+from magion.antenna.station import Antenna, MeasuredImpedance, Station
 from magion.arrays import ComplexArray, FloatArray
 from magion.constants import SPEED_OF_LIGHT
 from magion.ground import Ground
@@ -199,3 +199,31 @@ def leg_length_of(antenna: Antenna, ground: Ground) -> float | None:
             share = -reactance[i] / (reactance[i + 1] - reactance[i])
             return float(legs[i] + share * (legs[i + 1] - legs[i]))
     return HALF_WAVE_LEG * wavelength
+
+
+def unknown_impedance(station: Station, frequency: float) -> str:
+    """Why the elements' impedance is not known at a frequency, for messages.
+
+    Parameters
+    ----------
+    station : Station
+        The station.
+    frequency : float
+        Frequency [Hz].
+
+    Returns
+    -------
+    str
+        A clause that says what is accepted.
+    """
+    megahertz = f"{frequency / 1e6:.3f} MHz"
+    if station.antenna.measured is not None:
+        return (
+            f"at {megahertz} the legs are longer than {LONGEST_LEG:g} wavelengths, where the "
+            "current at the feed point vanishes; accepted: lower frequencies"
+        )
+    return (
+        f"the elements' impedance at {megahertz} is outside the shipped table (legs of 0.15 to "
+        "0.35 wavelengths, ends 0.0125 to 1 up) and is not guessed; give resistance_ohm, "
+        "reactance_ohm and quality_factor in [antenna]"
+    )

@@ -22,7 +22,7 @@ def on_disc(azimuth_deg: ArrayLike, elevation_deg: ArrayLike) -> tuple[FloatArra
     Returns
     -------
     x, y : ndarray
-        East and north, 90 at the horizon [deg].
+        East and north, as angles from the zenith in degrees: 90 at the horizon.
     """
     azimuth, zenith = np.radians(azimuth_deg), 90.0 - np.asarray(elevation_deg, float)
     return zenith * np.sin(azimuth), zenith * np.cos(azimuth)

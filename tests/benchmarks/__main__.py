@@ -2,9 +2,15 @@
 
 import sys
 
-from tests.benchmarks import faces, rays, sky, waves
+from tests.benchmarks import antenna, faces, rays, sky, waves
 
-GROUPS = {"rays": rays.rows, "waves": waves.rows, "sky": sky.rows, "faces": faces.rows}
+GROUPS = {
+    "rays": rays.rows,
+    "waves": waves.rows,
+    "sky": sky.rows,
+    "antenna": antenna.rows,
+    "faces": faces.rows,
+}
 
 if __name__ == "__main__":
     wanted = sys.argv[1:] or list(GROUPS)

@@ -19,6 +19,7 @@ from magion.geometry import (
     parse_place,
     place_of_locator,
     solar_zenith_angle,
+    source_axes,
     subsolar_point,
     to_cartesian,
     travel,
@@ -286,6 +287,35 @@ def test_directions():
     back = azimuth_elevation(7.5 * horizontal_direction(azimuth, elevation, lat, lon), lat, lon)
     assert np.abs(back[0] - azimuth).max() < 1e-13
     assert np.abs(back[1] - elevation).max() < 1e-13
+
+
+@pytest.mark.parametrize(
+    ("azimuth_deg", "elevation_deg", "h", "v"),
+    [
+        (0.0, 0.0, (1.0, 0.0, 0.0), (0.0, 0.0, 1.0)),  # a source in the north: h is east
+        (90.0, 0.0, (0.0, -1.0, 0.0), (0.0, 0.0, 1.0)),  # in the east: h is south
+        (0.0, 90.0, (1.0, 0.0, 0.0), (0.0, -1.0, 0.0)),  # overhead
+        (180.0, 45.0, (-1.0, 0.0, 0.0), (0.0, math.sqrt(0.5), math.sqrt(0.5))),
+    ],
+)
+def test_transverse_axes_of_a_source(azimuth_deg, elevation_deg, h, v):
+    found = source_axes(math.radians(azimuth_deg), math.radians(elevation_deg))
+    assert np.allclose(found, [h, v], atol=1e-15)
+
+
+def test_transverse_axes_and_the_travel_are_right_handed():
+    rng = np.random.default_rng(8)
+    azimuth, elevation = rng.uniform(0.0, 6.3, 50), rng.uniform(-1.5, 1.5, 50)
+    h, v = source_axes(azimuth, elevation)
+    flat = np.cos(elevation)
+    source = np.array([flat * np.sin(azimuth), flat * np.cos(azimuth), np.sin(elevation)])
+    assert np.allclose(np.cross(h, v, axis=0), -source, atol=1e-14)  # an arriving wave's travel
+    assert np.allclose(h[2], 0.0)
+    # h points to where the source goes as its azimuth grows
+    step = 1e-6
+    grown = np.array([np.sin(azimuth + step), np.cos(azimuth + step)])
+    assert (h[0] * (grown[0] - np.sin(azimuth)) + h[1] * (grown[1] - np.cos(azimuth)) > 0).all()
+    assert (v[2] >= 0.0).all()
 
 
 def test_sun_at_equinoxes_and_solstices():
