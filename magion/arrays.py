@@ -105,3 +105,43 @@ def as_floats(*values: ArrayLike) -> tuple[FloatArray, ...]:
         The values as float64, broadcast to one shape.
     """
     return tuple(np.broadcast_arrays(*(np.asarray(v, dtype=np.float64) for v in values)))
+
+
+def weighted(weights: FloatArray, values: FloatArray) -> FloatArray:
+    """Weighted sum of rows, each column bit by bit the same whatever stands beside it.
+
+    Parameters
+    ----------
+    weights : ndarray, shape (k,)
+        Weights.
+    values : ndarray, shape (k, n)
+        Rows, in any one unit.
+
+    Returns
+    -------
+    ndarray, shape (n,)
+        Their sum. (A matrix product rounds the last columns of a batch otherwise.)
+    """
+    return np.asarray(np.einsum("k,kn->n", weights, values))
+
+
+def padded(columns: FloatArray, multiple: int) -> FloatArray:
+    """Columns repeated until their number is a multiple, for products that round alike.
+
+    Parameters
+    ----------
+    columns : ndarray, shape (m, n)
+        Columns, in any one unit.
+    multiple : int
+        What the number of columns shall be a multiple of [1].
+
+    Returns
+    -------
+    ndarray, shape (m, n or more)
+        The columns, and some of them again behind.
+    """
+    n = columns.shape[1]
+    lacking = -n % multiple
+    if n == 0 or lacking == 0:
+        return columns
+    return np.asarray(columns.take(np.arange(n + lacking) % n, axis=1))

@@ -14,7 +14,7 @@ import numpy as np
 from numpy.polynomial import chebyshev
 from numpy.typing import ArrayLike
 
-from magion.arrays import FloatArray, IntArray, as_floats
+from magion.arrays import FloatArray, IntArray, as_floats, padded
 from magion.constants import EARTH_RADIUS, GYROFREQUENCY_PER_TESLA
 from magion.errors import MagionError, OutsideModelError
 from magion.geometry import as_utc, great_circle, local_axes, to_cartesian, travel
@@ -211,6 +211,10 @@ def _derivative_matrix(degree: int) -> FloatArray:
     return out
 
 
+# A matrix product rounds a column alike whatever stands beside it, if so many do.
+_COLUMNS: Final = 8
+
+
 @dataclass(frozen=True, slots=True, kw_only=True)
 class FieldFit:
     """A smooth fit of the field over the region of a path.
@@ -265,7 +269,8 @@ class FieldFit:
         gradient : ndarray, shape (3, 3, n)
             Derivative of component i along axis j at [i, j] [T/m].
         """
-        path = self.axes @ position
+        count = position.shape[1]
+        path = self.axes @ padded(position, _COLUMNS)
         c, t, n = path
         ring = c * c + t * t
         square = ring + n * n
@@ -294,7 +299,7 @@ class FieldFit:
             slope *= (np.abs(x) <= 1.0)[:, None, :]
         turned = self.axes.T @ slope
         gradient = np.einsum("min,mjn->ijn", values[1:], turned)
-        return values[0], gradient
+        return values[0][:, :count], gradient[..., :count]
 
 
 def fit_field(

@@ -76,7 +76,7 @@ class Cluster(AbstractContextManager["Cluster"]):
                 "--scheduler needs dask.distributed; install magion with its extra 'cluster'"
             ) from None
         try:
-            self._client: Any = distributed.Client(address, timeout="10s", set_as_default=False)
+            self._client: Any = distributed.Client(address, timeout="5s", set_as_default=False)
         except (OSError, ValueError, TimeoutError) as error:
             first = str(error).splitlines()[0] if str(error) else type(error).__name__
             raise InputError(f"the scheduler {address} does not answer: {first}") from None

@@ -126,7 +126,8 @@ def scene_of(
         link.receiver.latitude,
         link.receiver.longitude,
     )
-    field = fit_field(*ends, moments[0])
+    # Of the day's start: the field is one for all hours, whichever are asked for.
+    field = fit_field(*ends, moments[0].replace(hour=0, minute=0, second=0, microsecond=0))
     limit = _greatest_gyrofrequency(link, field)
     if given.profile is not None:
         one = _measured(given, given.profile)

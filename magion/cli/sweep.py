@@ -188,6 +188,9 @@ class _Run:
 
     def __exit__(self, *error: object) -> None:
         self._file.close()
+        if self.rows == 0:  # nothing to go on with
+            self.partial.unlink(missing_ok=True)
+            self.key.unlink(missing_ok=True)
 
     def write(self, row: "SweepRow") -> None:
         """Add one row."""

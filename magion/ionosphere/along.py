@@ -173,6 +173,9 @@ class PathIonosphere:
         gradient : ndarray, shape (3, n)
             Its gradient [m⁻⁴].
         """
+        if position.shape[1] == 1:  # a single column would be rounded otherwise
+            density, gradient = self.density(np.repeat(position, 2, axis=1), np.repeat(which, 2))
+            return density[:1], gradient[:, :1]
         path = self.axes @ position
         c, t, n = path
         ring = c * c + t * t

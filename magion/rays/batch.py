@@ -9,7 +9,7 @@ from enum import IntEnum
 
 import numpy as np
 
-from magion.arrays import BoolArray, FloatArray, IntArray, dot
+from magion.arrays import BoolArray, FloatArray, IntArray, dot, weighted
 from magion.constants import EARTH_RADIUS
 from magion.field import MagneticField
 from magion.ionosphere.medium import Medium
@@ -249,9 +249,9 @@ def _advance(
         stages[0] = slope
         flat = stages.reshape(7, -1)
         for i, weights in enumerate(_WEIGHTS):
-            trial = state + (weights @ flat[: i + 1]).reshape(STATE, n) * step
+            trial = state + weighted(weights, flat[: i + 1]).reshape(STATE, n) * step
             stages[i + 1], trial_energy = derivative_and_hamiltonian(trial, rays, medium, field)
-        error = np.abs((_ERROR @ flat).reshape(STATE, n) * step)
+        error = np.abs(weighted(_ERROR, flat).reshape(STATE, n) * step)
         size = np.maximum(
             error[0:3].max(axis=0) / position_tolerance,
             error[3:6].max(axis=0) / direction_tolerance,

@@ -96,7 +96,8 @@ class Link:
             Distances on the ground from the transmitter; `along` runs from
             half-way backward to half-way round forward [m].
         """
-        u, f, s = self.up @ position, self.forward @ position, self.left @ position
+        axes = np.stack([self.up, self.forward, self.left])
+        u, f, s = np.einsum("ij,jn->in", axes, position)
         return np.arctan2(f, u) * EARTH_RADIUS, np.arctan2(s, np.hypot(u, f)) * EARTH_RADIUS
 
 
