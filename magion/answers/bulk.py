@@ -73,6 +73,8 @@ class Found:
 
     Parameters
     ----------
+    distance_km : float
+        Length of the path on the ground [km].
     state : str
         Which waves arrive.
     probability : tuple of float or None
@@ -93,6 +95,7 @@ class Found:
         The waves at the receiver's antenna.
     """
 
+    distance_km: float
     state: str
     probability: tuple[float, ...] | None
     wave: str | None
@@ -180,6 +183,7 @@ def answer_path_day(job: PathDay, ionosphere: IonosphereInput) -> tuple[Found, .
         known = [float(m) if math.isfinite(m) else None for m in both]
         answers.append(
             Found(
+                distance_km=link.distance / 1e3,
                 state=state_of(MODES[0] in leading, MODES[1] in leading),
                 probability=None if np.isnan(chances[0]) else tuple(float(c) for c in chances),
                 wave=None if taken is None else taken.value,

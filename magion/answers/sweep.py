@@ -14,10 +14,9 @@ from typing import Final
 
 from magion.answers.bulk import STEP_MIN, Found, PathDay, Query, answer_path_day, nearest_step
 from magion.answers.inputs import IonosphereInput
-from magion.constants import EARTH_RADIUS
 from magion.errors import InputError, MagionError
 from magion.formats.contacts import BadRow, Contact
-from magion.geometry import Place, great_circle
+from magion.geometry import Place
 
 PORTION: Final = 4000
 """Rows that are grouped together [1]."""
@@ -40,8 +39,6 @@ class SweepRow:
     ----------
     contact : Contact
         The row.
-    distance_km : float
-        On the ground [km].
     answered_for_utc : str
         Instant that it is answered for, ISO 8601.
     found : Found
@@ -49,7 +46,6 @@ class SweepRow:
     """
 
     contact: Contact
-    distance_km: float
     answered_for_utc: str
     found: Found
 
@@ -196,15 +192,8 @@ def _answered(row: Contact, key: _Key, found: Found | str) -> SweepRow | BadRow:
         return BadRow(line=row.line, reason=found)
     (_, _, (year, month, day)), query = key
     minute = round(query.minute)
-    angle, _ = great_circle(
-        row.transmitter.latitude,
-        row.transmitter.longitude,
-        row.receiver.latitude,
-        row.receiver.longitude,
-    )
     return SweepRow(
         contact=row,
-        distance_km=float(angle) * EARTH_RADIUS / 1e3,
         answered_for_utc=f"{year:04d}-{month:02d}-{day:02d}T{minute // 60:02d}:{minute % 60:02d}Z",
         found=found,
     )

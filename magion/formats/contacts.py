@@ -10,6 +10,7 @@ import re
 from collections.abc import Iterator
 from dataclasses import dataclass
 from datetime import UTC, datetime
+from functools import lru_cache
 from pathlib import Path
 from typing import Final, TextIO
 
@@ -43,6 +44,10 @@ _BANDS_MHZ: Final = {
 }
 _FIELD = re.compile(r"<\s*([A-Za-z0-9_]+)\s*(?::\s*(\d+)\s*(?::[^>]*)?)?>")
 _ANGLE = re.compile(r"([NSEWnsew])(\d{1,3}) (\d{1,2}(?:\.\d+)?)")
+
+
+# The same few places come again and again in a log.
+_known_place = lru_cache(maxsize=20_000)(parse_place)
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -154,8 +159,8 @@ def _csv(text: TextIO, name: str) -> Iterator[Contact | BadRow]:
             contact = Contact(
                 line=number,
                 time=_time(time),
-                transmitter=parse_place(start),
-                receiver=parse_place(end),
+                transmitter=_known_place(start),
+                receiver=_known_place(end),
                 frequency_mhz=_frequency(mhz),
             )
         except InputError as error:
@@ -314,7 +319,7 @@ def _place(fields: dict[str, str], grid: str, latitude: str, longitude: str) -> 
         values = [_angle(fields[latitude], "NS", 90.0), _angle(fields[longitude], "EW", 180.0)]
         return Place(latitude_deg=values[0], longitude_deg=values[1])
     if fields.get(grid):
-        return parse_place(fields[grid])
+        return _known_place(fields[grid])
     return None
 
 

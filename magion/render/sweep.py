@@ -50,7 +50,7 @@ def cells(row: SweepRow) -> list[str]:
         *(f"{p.latitude_deg:.4f},{p.longitude_deg:.4f}" for p in ends),
         f"{contact.frequency_mhz:g}",
         row.answered_for_utc,
-        f"{row.distance_km:.1f}",
+        f"{found.distance_km:.1f}",
         found.state,
         _number(chance, 3),
         found.wave or "",

@@ -2,13 +2,14 @@
 
 import sys
 
-from tests.benchmarks import antenna, faces, rays, sky, waves
+from tests.benchmarks import antenna, faces, rays, sky, sweep, waves
 
 GROUPS = {
     "rays": rays.rows,
     "waves": waves.rows,
     "sky": sky.rows,
     "antenna": antenna.rows,
+    "sweep": sweep.rows,
     "faces": faces.rows,
 }
 
