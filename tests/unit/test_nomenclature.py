@@ -29,6 +29,8 @@ PASS_THROUGH = {
     "arrays.cross",
     "arrays.dot",
     "arrays.norm",
+    "arrays.padded",
+    "arrays.weighted",
     "errors.require_range",
     "formats.tables.Row.number",
     "ionosphere.profile.to_polynomials",
