@@ -73,6 +73,7 @@ def command(
     \b
     Examples:
       magion relay examples/relay_swapped.csv --station examples/larch_hut.toml
+          --partners examples/net_alps.csv --readings examples/relay_readings.csv
       magion relay --plan 47.10,10.85 46.50,11.35 -f 3.65 --time 2026-12-21
     """  # noqa: D301
     from magion.answers.relay import answer_relay, answer_relay_plan

@@ -48,7 +48,7 @@ def command(
 
     \b
     Example:
-      magion sweep contacts.adi --at 46.50,11.35 --flux 130 --output answers.csv
+      magion sweep examples/contacts.adi --at 46.50,11.35 --flux 130 --output answers.csv
     """  # noqa: D301
     from magion.answers.sweep import sweep
     from magion.cli.writing import require_target
