@@ -37,10 +37,11 @@ def command(
       magion antenna -f 5.3 --station examples/larch_hut.toml --plot sky.png
     """  # noqa: D301
     from magion.answers.pattern import answer_antenna
-    from magion.cli.writing import draw, give
+    from magion.cli.writing import draw, give, require_files
     from magion.render.data import antenna_rows
     from magion.render.station import antenna_text
 
+    require_files(output, plot)
     answer = answer_antenna(station, frequency, elevation, azimuth)
     if plot is not None:
         from magion.plots.antenna import antenna_figure

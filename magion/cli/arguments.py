@@ -157,11 +157,13 @@ class Range(click.ParamType):
                 ctx,
             )
         first, last, step = parts
-        count = int((last - first) / step + 1e-9) + 1
-        if count > MOST_IN_RANGE:
-            self.fail(
-                f"{typed(value)} is {count} values; accepted: up to {MOST_IN_RANGE}", param, ctx
-            )
+        steps = (last - first) / step + 1e-9
+        if steps >= MOST_IN_RANGE:
+            from magion.formats.tables import printable
+
+            many = f"is more than {MOST_IN_RANGE} values; accepted: up to that"
+            self.fail(f"{printable(typed(value))} {many}", param, ctx)
+        count = int(steps) + 1
         # The decimals that were typed, without the noise of the sum.
         return tuple(round(first + i * step, 9) for i in range(count))
 

@@ -71,11 +71,10 @@ def command(
     """  # noqa: D301
     from magion.answers.day import answer_day
     from magion.cli.progress import shown
-    from magion.cli.writing import draw, give, require_figure
+    from magion.cli.writing import draw, give, require_files
     from magion.render.day import day_rows, day_text
 
-    if plot is not None:
-        require_figure(plot)
+    require_files(output, plot)
     with shown("tracing the day") as progress:
         answer = answer_day(
             transmitter,

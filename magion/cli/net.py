@@ -70,9 +70,10 @@ def command(
     """  # noqa: D301
     from magion.answers.net import answer_net
     from magion.cli.progress import shown
-    from magion.cli.writing import give
+    from magion.cli.writing import give, require_files
     from magion.render.net import net_rows, net_text
 
+    require_files(output)
     with shown("tracing the net") as progress:
         answer = answer_net(
             place,

@@ -70,9 +70,10 @@ def command(
       magion station 46.50,11.35 -f 1.85 -f 3.5:3.8:0.1 -f 7.1 --plot sky.png
     """  # noqa: D301
     from magion.answers.sense import answer_station
-    from magion.cli.writing import draw, give
+    from magion.cli.writing import draw, give, require_files
     from magion.render.sense import sense_rows, sense_text
 
+    require_files(output, plot)
     wanted = flat(frequencies)
     answer = answer_station(
         place,

@@ -120,6 +120,28 @@ def require_figure(target: Path) -> str:
     return ending
 
 
+def require_files(output: Path | None, plot: Path | None = None) -> None:
+    """Refuse files that cannot be written before work is spent, or one of them is written.
+
+    Parameters
+    ----------
+    output, plot : Path or None
+        Files for the answer and for its figure.
+
+    Raises
+    ------
+    InputError
+        If one cannot be written, the figure's ending is no figure's, or both
+        are one file.
+    """
+    if output is not None:
+        require_target(output)
+    if plot is not None:
+        require_figure(plot)
+    if output and plot and os.path.realpath(output) == os.path.realpath(plot):
+        raise InputError("--plot and --output name one file; accepted: two files")
+
+
 def require_target(target: Path) -> None:
     """Refuse a file that cannot be written before work is spent on it.
 

@@ -1,6 +1,7 @@
 """The day of a path as one figure: several panels on a common time axis."""
 
 import math
+import textwrap
 from typing import TYPE_CHECKING, Any
 
 import numpy as np
@@ -85,23 +86,41 @@ def plot_day_frequencies(answer: DayAnswer, ax: "Axes | None" = None) -> "Axes":
     top = np.nanmax([answer.muf_mhz.max(initial=0.0, where=np.isfinite(answer.muf_mhz)), 1.0])
     marks = [f.frequency_mhz for f in answer.frequencies]
     ax.set_ylim(0.0, 1.12 * max([float(top), *[m for m in marks if m < 2.0 * top]]))
+    ceiling = ax.get_ylim()[1]
     for k, mark in enumerate(marks):
         line, grey = _style(k)
-        ax.axhline(mark, linestyle=line, color=grey, linewidth=1.0)
-        if mark <= ax.get_ylim()[1]:
-            ax.annotate(
-                f"{mark:g}",
-                (24.0, mark),
-                xytext=(3, 0),
-                textcoords="offset points",
-                va="center",
-                fontsize=8,
-                annotation_clip=False,
-            )
-    ax.set_ylabel("MHz")
+        if mark <= ceiling:
+            ax.axhline(mark, linestyle=line, color=grey, linewidth=1.0)
+    for mark, height in _spread_out(marks, ceiling):
+        ax.annotate(
+            f"{mark:g}" if mark <= ceiling else f"{mark:g} ↑",
+            (24.0, height),
+            xytext=(3, 0),
+            textcoords="offset points",
+            va="center",
+            fontsize=8,
+            annotation_clip=False,
+        )
+    ax.set_ylabel("frequency [MHz]")
+    ax.set_title("critical frequencies, MUFs, operating frequencies", fontsize=8, pad=3)
     ax.legend(loc="lower center", fontsize=7.5, ncols=4, framealpha=0.9)
     _time_axis(answer, ax)
     return ax
+
+
+def _spread_out(marks: list[float], ceiling: float) -> list[tuple[float, float]]:
+    """Marks from below, and heights for their names that leave each a line of text."""
+    line = 0.055 * ceiling
+    placed: list[tuple[float, float]] = []
+    for mark in sorted(marks):
+        least = placed[-1][1] + line if placed else 0.0
+        placed.append((mark, max(min(mark, ceiling), least)))
+    # What was pushed out above goes down again.
+    most = ceiling
+    for i in range(len(placed) - 1, -1, -1):
+        placed[i] = (placed[i][0], min(placed[i][1], most))
+        most = placed[i][1] - line
+    return placed
 
 
 def plot_day_states(answer: DayAnswer, ax: "Axes | None" = None) -> "Axes":
@@ -155,7 +174,8 @@ def plot_day_states(answer: DayAnswer, ax: "Axes | None" = None) -> "Axes":
         [len(answer.frequencies) - 0.5 - k for k in range(len(answer.frequencies))],
         [f"{f.frequency_mhz:g}" for f in answer.frequencies],
     )
-    ax.set_ylabel("MHz")
+    ax.set_ylabel("f [MHz]")
+    ax.set_title(_states_key(answer), fontsize=8, pad=3)
     ax.tick_params(axis="y", length=0)
     _time_axis(answer, ax)
     return ax
@@ -221,15 +241,17 @@ def plot_day_split(answer: DayAnswer, quantity: str, ax: "Axes | None" = None) -
             answer.hours, split, line, color=grey, linewidth=1.4, label=f"{f.frequency_mhz:g} MHz"
         )
     ax.axhline(0.0, color="0.5", linewidth=0.6)
-    ax.set_ylabel(
-        {
-            "elevation_deg": "elevation\nX − O [°]",
-            "azimuth_deg": "azimuth\nX − O [°]",
-            "group_delay_ms": "delay\nX − O [ms]",
-        }[quantity]
-    )
+    name, unit = {
+        "elevation_deg": ("elevation", "°"),
+        "azimuth_deg": ("azimuth", "°"),
+        "group_delay_ms": ("delay", "ms"),
+    }[quantity]
+    ax.set_ylabel(f"X − O [{unit}]")
+    ax.set_title(f"{name} of the extraordinary less that of the ordinary wave", fontsize=8, pad=3)
     if not some:
-        ax.text(12.0, 0.0, "never both waves", ha="center", va="bottom", fontsize=8)
+        ax.set_ylim(-1.0, 1.0)
+        ax.set_yticks([0.0])
+        ax.text(12.0, 0.1, "never both waves", ha="center", va="bottom", fontsize=8)
     _time_axis(answer, ax)
     return ax
 
@@ -251,20 +273,21 @@ def plot_day_absorption(answer: DayAnswer, ax: "Axes | None" = None) -> "Axes":
         extraordinary thick.
     """
     ax = _new_axes(1.6) if ax is None else ax
-    greatest = 1.0
+    greatest: float | None = None
     for k, f in enumerate(answer.frequencies):
         line, grey = _style(k)
         for i, width in enumerate((0.9, 2.2)):
             values = f.absorption_db[i]
-            ax.plot(answer.hours, values, line, color=grey, linewidth=width)
+            name = f"{f.frequency_mhz:g} MHz, {'OX'[i]}"
+            ax.plot(answer.hours, values, line, color=grey, linewidth=width, label=name)
             if np.isfinite(values).any():
-                greatest = max(greatest, float(np.nanmax(values)))
-    ax.set_ylim(0.0, 1.08 * greatest)
-    ax.set_ylabel("absorption\n[dB]")
-    ax.text(
-        0.01, 0.93, "thin O, thick X", transform=ax.transAxes, va="top", fontsize=7.5,
-        bbox={"boxstyle": "round,pad=0.1", "facecolor": "white", "edgecolor": "none"},
-    )  # fmt: skip
+                greatest = max(greatest or 0.0, float(np.nanmax(values)))
+    if greatest is None:
+        ax.set_yticks([0.0])
+        ax.text(12.0, 0.5, "no wave arrives", ha="center", va="center", fontsize=8)
+    ax.set_ylim(0.0, 1.08 * max(greatest or 0.0, 1.0))
+    ax.set_ylabel("loss [dB]")
+    ax.set_title("absorption: ordinary thin, extraordinary thick", fontsize=8, pad=3)
     _time_axis(answer, ax)
     return ax
 
@@ -286,22 +309,23 @@ def day_figure(answer: DayAnswer) -> "Figure":
 
     count = len(answer.frequencies)
     heights = [2.9, 0.35 + 0.55 * count, 1.15, 1.15, 1.15, 1.3]
-    figure = Figure(figsize=(6.0, sum(heights) + 1.6), layout="constrained")
+    figure = Figure(figsize=(6.0, sum(heights) + 2.4 + 0.2 * (count > 1)), layout="constrained")
+    ends = f"{answer.transmitter} to {answer.receiver}, {answer.distance_km:.0f} km"
     figure.suptitle(
-        f"{answer.transmitter} to {answer.receiver}, {answer.distance_km:.0f} km\n"
+        f"{textwrap.fill(ends, 62)}\n"
         f"{answer.date}, UTC; grey: sun below the horizon at the midpoint",
-        fontsize=10,
+        fontsize=10 if len(ends) <= 62 else 8,
     )
     panels = figure.subplots(6, 1, sharex=True, gridspec_kw={"height_ratios": heights})
     plot_day_frequencies(answer, panels[0])
     plot_day_states(answer, panels[1])
-    panels[1].set_title(_states_key(answer), fontsize=8, pad=3)
     for ax, quantity in zip(
         panels[2:5], ("elevation_deg", "azimuth_deg", "group_delay_ms"), strict=True
     ):
         plot_day_split(answer, quantity, ax)
     if count > 1:
-        panels[2].legend(loc="upper left", fontsize=7.5, ncols=min(count, 4), framealpha=0.9)
+        handles, names = panels[2].get_legend_handles_labels()
+        figure.legend(handles, names, loc="outside lower center", fontsize=7.5, ncols=min(count, 4))
     plot_day_absorption(answer, panels[5])
     panels[5].set_xlabel("UTC [h]")
     _solar_axis(answer, panels[0])

@@ -5,7 +5,7 @@ from typing import TYPE_CHECKING
 import numpy as np
 
 from magion.answers.sky import SkyAnswer
-from magion.plots.sky import mark_direction, on_disc, sky_axes
+from magion.plots.sky import mark_direction, name_contours, name_rings, on_disc, sky_axes
 from magion.polarization import CIRCULAR_LIMIT_DB, LINEAR_LIMIT_DB
 
 if TYPE_CHECKING:
@@ -43,14 +43,17 @@ def plot_sense(answer: SkyAnswer, ax: "Axes | None" = None) -> "Axes":
         levels=[0.0, minor[2], minor[1], minor[0], 1.001],
         colors=["0.62", "0.80", "0.92", "1.0"],
     )
-    # A single contour of zero changes its dashes; it is drawn thick instead.
-    ax.contour(x, y, value, levels=[0.0], colors="black", linewidths=2.2)
-    levels = sorted([*minor, *(-m for m in minor)])
-    lines = ax.contour(x, y, value, levels=levels, colors="black", linewidths=0.9)
-    for text in ax.clabel(lines, fmt=_ratio_name, fontsize=8):
-        text.set_bbox({"boxstyle": "round,pad=0.1", "facecolor": "white", "edgecolor": "none"})
-        text.set_rotation(0.0)
     mark_direction(ax, answer.declination_deg, "magnetic N")
+    # A single contour of zero changes its dashes; it is drawn thick instead.
+    if value.min() < 0.0 < value.max():
+        ax.contour(x, y, value, levels=[0.0], colors="black", linewidths=2.2)
+    levels = sorted([*minor, *(-m for m in minor)])
+    within = [v for v in levels if value.min() < v < value.max()]
+    if within:
+        lines = ax.contour(x, y, value, levels=within, colors="black", linewidths=0.9)
+        name_contours(ax, lines, _ratio_name)
+    name_rings(ax)
+    ax.set_title("hand and axial ratio of the ordinary wave [dB]", fontsize=9)
     return ax
 
 

@@ -134,7 +134,9 @@ def _hourly(answer: DayAnswer) -> list[str]:
 
 
 def _cell(value: float, form: str, wide: int) -> str:
-    return f"{format(value, form) if math.isfinite(value) else '-':>{wide}}"
+    # Adding zero after rounding leaves no "-0.000".
+    places = int(form[-2])
+    return f"{format(round(value, places) + 0.0, form) if math.isfinite(value) else '-':>{wide}}"
 
 
 def day_rows(answer: DayAnswer) -> list[dict[str, Any]]:

@@ -26,7 +26,8 @@ def net_text(answer: NetAnswer) -> str:
     first = answer.hours[0]
     if len(answer.hours) == 1:
         lines = wrapped(first.headline, "", "")
-        lines += ["", f"Net control {answer.control}, {in_words(first.time_utc)}"]
+        head = f"Net control {answer.control}, {in_words(first.time_utc)}"
+        lines += ["", *wrapped(head, "", "")]
         lines += ["", *_frequencies(first, len(answer.partners)), "", *_partners(answer, first)]
         lines += wrapped(
             "B both waves arrive, X only the extraordinary, O only the ordinary, - neither; "
@@ -34,7 +35,8 @@ def net_text(answer: NetAnswer) -> str:
             "MHz; rejection of the other wave in dB, where the antenna is known."
         )
     else:
-        lines = [f"Net control {answer.control}, {first.time_utc[:10]}, hour by hour (UTC)", ""]
+        head = f"Net control {answer.control}, {first.time_utc[:10]}, hour by hour (UTC)"
+        lines = [*wrapped(head, "", ""), ""]
         for hour in answer.hours:
             head = f"  {hour.time_utc[11:16]}  "
             lines += wrapped(hour.headline, " " * len(head), head)
@@ -79,9 +81,11 @@ def _partners(answer: NetAnswer, hour: NetHour) -> list[str]:
 
 
 def _cell(cell: NetCell) -> str:
-    margin = "" if cell.margin_mhz is None else f"{cell.margin_mhz:+.1f}"
+    margin = ""
+    if cell.margin_mhz is not None:
+        margin = f"{cell.margin_mhz:{'+.1f' if abs(cell.margin_mhz) < 9.95 else '+.0f'}}"
     rejection = "" if cell.rejection_db is None else f"{round(cell.rejection_db) + 0:d}"
-    return f"{LETTERS[cell.state]} {(cell.receive or '-')[:6]:<6} {margin:>4} {rejection:>2}"
+    return f"{LETTERS[cell.state]} {(cell.receive or '-')[:6]:<6} {margin:>4}{rejection:>3}"
 
 
 def net_rows(answer: NetAnswer) -> list[dict[str, Any]]:

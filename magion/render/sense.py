@@ -43,7 +43,7 @@ def sense_text(answer: SenseAnswer) -> str:
         )
     shown = answer.elevations_deg[:3]
     rejects = answer.station is not None
-    heads = "".join(f" {f'at {e:g}°':<8}" for e in shown)
+    heads = "".join(f" {f'at {e:.4g}°':<8}" for e in shown)
     lines.append("")
     lines.append(
         f"    MHz  fH/f   X/O  top dB {heads} linear"
@@ -72,7 +72,9 @@ def _letter(cell: SenseCell) -> str:
 
 
 def _row(answer: SenseAnswer, row: SenseRow, shown: int) -> str:
-    ratio = "-" if row.absorption_ratio is None else f"{row.absorption_ratio:.1f}"
+    ratio = "-"
+    if row.absorption_ratio is not None:
+        ratio = f"{row.absorption_ratio:.1f}" if row.absorption_ratio < 999.0 else ">999"
     top = row.overhead
     shape = "inf" if top.axial_ratio_db is None else f"{top.axial_ratio_db:.1f}"
     count = len(answer.bearings_deg)

@@ -6,10 +6,12 @@ import numpy as np
 
 from magion.answers.feed import BandRow, FeedAnswer, PositionInFeed
 from magion.answers.pattern import AntennaAnswer, PositionPattern
+from magion.arrays import FloatArray
 from magion.render.text import wrapped
 
 _ROWS_ON_PAGE = 9
-_TABLE_ELEVATIONS = (90, 75, 60, 45, 30, 20, 15, 10, 5)
+_TABLE_ELEVATIONS = (5, 10, 15, 20, 30, 45, 60, 75, 90)
+_MOST_ELEVATIONS = 12
 _TABLE_AZIMUTHS = (0, 45, 90, 135, 180, 225, 270, 315)
 
 
@@ -49,7 +51,7 @@ def feed_text(answer: FeedAnswer) -> str:
         One page to print.
     """
     name = f" of {answer.station}" if answer.station else ""
-    lines = [f"Build sheet for the feed{name}, {answer.frequency_mhz:.3f} MHz"]
+    lines = wrapped(f"Build sheet for the feed{name}, {answer.frequency_mhz:.3f} MHz", "", "")
     lines += wrapped(answer.headline, "", "")
     lines += _antenna_rows(answer)
     lines += _line_rows(answer)
@@ -84,12 +86,16 @@ def _line_rows(answer: FeedAnswer) -> list[str]:
     if line is None:
         if answer.positions and all(p.delayed_arm is None for p in answer.positions):
             return []
-        return ["The 90 degrees", f"  made by the {answer.feed} itself: no delay line to cut"]
+        maker = "digital combination" if answer.feed == "digital" else answer.feed
+        return ["The 90 degrees", f"  made by the {maker} itself: no delay line to cut"]
     rows = [f"The delay line (velocity factor {line.velocity_factor:g})"]
     rows.append(f"  a quarter wave is          {_length(line.quarter_wave_m)}")
-    if answer.station is not None or line.leads_m:
+    if answer.antenna is not None:
         rows.append(f"  less leads and connectors  {_length(line.leads_m)}")
-    rows.append(f"  cut the line to            {_length(line.cut_m)}")
+    if line.cut_m > 0.0:
+        rows.append(f"  cut the line to            {_length(line.cut_m)}")
+    else:
+        rows.append("  nothing is left to cut: the leads alone are longer")
     if line.present_m is not None:
         rows.append(f"  the station file has       {_length(line.present_m)}")
         rows.append(f"    with leads {line.present_deg:.1f}° at {answer.frequency_mhz:.3f} MHz")
@@ -97,7 +103,7 @@ def _line_rows(answer: FeedAnswer) -> list[str]:
         f"  about 20 dB hold while it is right to {tolerance.phase_deg:.0f}° "
         f"({tolerance.length_m:.2f} m of cable) and {tolerance.amplitude_db:.0f} dB"
     )
-    if answer.station is None:
+    if answer.antenna is None:
         rows += [
             f"  {q.cable + ', ' + format(q.velocity_factor, 'g'):<31}{_length(q.length_m)}"
             for q in answer.quarter_waves
@@ -116,7 +122,9 @@ def _relay_rows(answer: FeedAnswer) -> list[str]:
     wide = max(len(p.label) for p in answer.positions)
     rows = ["Relay (waves from overhead)"]
     made = "line" if answer.line is not None else "90°"
-    rows += [f"  {p.label:<{wide}}  {_position(p, made)}" for p in answer.positions]
+    for p in answer.positions:
+        head = f"  {p.label:<{wide}}  "
+        rows += wrapped(_position(p, made), " " * len(head), head)
     if answer.has_hand:
         rows.append("  A wave heard on one hand is answered with the other: change over to send.")
         rows.append("  The legs of one dipole swapped, the two hands change places.")
@@ -149,7 +157,7 @@ def _band_rows(answer: FeedAnswer) -> list[str]:
         rows = tuple(rows[i] for i in picked)
     where = f", delay in arm {answer.delayed_arm}" if answer.delayed_arm else ""
     head = f"Across the band{where}"
-    if answer.station is None:
+    if answer.antenna is None:
         head += ", arms matched and isolated"
     lines = [head]
     lines.append("      MHz path, °   element ohm apart, ° ratio, dB  rejected, dB  SWR lost, dB")
@@ -161,7 +169,7 @@ def _band_row(row: BandRow) -> str:
     ohm = "-"
     if row.resistance_ohm is not None and row.reactance_ohm is not None:
         ohm = f"{row.resistance_ohm:.0f}{round(row.reactance_ohm):+d}j"
-    apart = None if row.phase_deg is None else -row.phase_deg
+    apart = None if row.phase_deg is None else -row.phase_deg % 360.0
     return (
         f"  {row.frequency_mhz:7.3f}{_cell(row.line_deg, '.1f', 7)}{ohm:>14}"
         f"{_cell(apart, '.1f', 9)}{_cell(row.amplitude_db, '+.1f', 9)}"
@@ -181,12 +189,13 @@ def _check_rows(answer: FeedAnswer) -> list[str]:
             "    ",
             "  - ",
         )
-    rows += wrapped(
-        "Both paths into equal resistors of the cable's impedance, on two channels: 90° and "
-        "within 1 dB of each other at the resistors. Repeat with the relay thrown.",
-        "    ",
-        "  - ",
-    )
+    if answer.antenna is None or any(p.delayed_arm for p in answer.positions):
+        rows += wrapped(
+            "Both paths into equal resistors of the cable's impedance, on two channels: 90° and "
+            "within 1 dB of each other at the resistors. Repeat with the relay thrown.",
+            "    ",
+            "  - ",
+        )
     rows += wrapped("A good SWR proves nothing about the phase.", "    ", "  - ")
     return rows
 
@@ -212,14 +221,22 @@ def antenna_text(answer: AntennaAnswer) -> str:
         "",
     )
     arms = ", ".join(f"{a.name} {a.hot_bearing_deg:.0f}°" for a in answer.arms)
-    lines.append(f"Hot legs (true): {arms}. Cells: the hand that is favoured, by how many dB.")
-    elevations: Sequence[float] = [e for e in _TABLE_ELEVATIONS if e in answer.elevation_deg]
-    azimuths: Sequence[float] = [a for a in _TABLE_AZIMUTHS if a in answer.azimuth_deg]
-    if not elevations or not azimuths:
-        elevations, azimuths = list(answer.elevation_deg[::-1]), list(answer.azimuth_deg[:8])
+    lines += wrapped(f"Hot legs (true): {arms}. Cells: favoured hand, by how many dB.", "", "")
+    elevations = _picked(answer.elevation_deg, _TABLE_ELEVATIONS, _MOST_ELEVATIONS)[::-1]
+    whole = bool(np.all(answer.azimuth_deg == np.round(answer.azimuth_deg)))
+    azimuths = _picked(answer.azimuth_deg, _TABLE_AZIMUTHS, 8 if whole else 6)
     for position in answer.positions:
         lines += ["", *_pattern_rows(answer, position, elevations, azimuths)]
     return "\n".join(lines) + "\n"
+
+
+def _picked(values: FloatArray, usual: Sequence[float], most: int) -> list[float]:
+    """All values if they are few; else the usual ones among them, else some spread evenly."""
+    found = [float(v) for v in usual if v in values]
+    if values.size > most and len(found) > 1:
+        return found
+    spread = np.linspace(0, values.size - 1, min(most, values.size)).round().astype(int)
+    return [float(values[i]) for i in spread]
 
 
 def _pattern_rows(
@@ -234,14 +251,15 @@ def _pattern_rows(
         else f"delay in arm {position.delayed_arm}"
     )
     rows = [f"Relay {position.label} ({what})"]
-    heads = "".join(f"{f'{a:g}°':>7}" for a in azimuths)
-    rows.append(f"  elevation{heads}   best dBi: RHCP   LHCP")
+    wide = 6 if len(azimuths) > 6 else 8
+    heads = "".join(f"{f'{a:.5g}°':>{wide}}" for a in azimuths)
+    rows.append(f"  elev. {heads}  best dBi: RHCP   LHCP")
     columns = [int(np.flatnonzero(answer.azimuth_deg == a)[0]) for a in azimuths]
     for e in elevations:
         i = int(np.flatnonzero(answer.elevation_deg == e)[0])
-        cells = "".join(f"{_favoured(position.right_over_left_db[i, c]):>7}" for c in columns)
+        cells = "".join(f"{_favoured(position.right_over_left_db[i, c]):>{wide}}" for c in columns)
         right, left = position.right_dbi[i].max(), position.left_dbi[i].max()
-        rows.append(f"  {f'{e:g}°':>9}{cells}{_gain(right):>17}{_gain(left):>7}")
+        rows.append(f"{f'{e:.4g}°':>8}{cells}{_gain(right):>16}{_gain(left):>7}")
     return rows
 
 

@@ -34,6 +34,8 @@ _ASCII = str.maketrans(
         "…": "...",
     }
 )
+# Of the same width, where a table or a full line would shift.
+_ASCII_NARROW = str.maketrans({"°": "d", "…": "~", "≤": "<", "≥": ">"})
 
 
 def for_encoding(text: str, encoding: str | None) -> str:
@@ -54,8 +56,16 @@ def for_encoding(text: str, encoding: str | None) -> str:
     try:
         text.encode(encoding or "ascii")
     except (UnicodeEncodeError, LookupError):
-        return text.translate(_ASCII).encode("ascii", "replace").decode()
+        lines = "\n".join(_in_ascii(line) for line in text.split("\n"))
+        return lines.encode("ascii", "replace").decode()
     return text
+
+
+def _in_ascii(line: str) -> str:
+    wide = line.translate(_ASCII)
+    if len(wide) <= WIDTH and "  " not in line.strip():
+        return wide
+    return line.replace("± ", "±").translate(_ASCII_NARROW).translate(_ASCII)
 
 
 def wrapped(text: str, indent: str = "  ", first: str | None = None) -> list[str]:
@@ -127,8 +137,8 @@ def path_text(answer: PathAnswer) -> str:
     """
     lines = [*wrapped(answer.advice.headline, "", ""), ""]
     path = answer.path
-    lines.append(f"  from  {_end(answer.transmitter)}")
-    lines.append(f"  to    {_end(answer.receiver)}")
+    lines += wrapped(_end(answer.transmitter), " " * 8, "  from  ")
+    lines += wrapped(_end(answer.receiver), " " * 8, "  to    ")
     way = f"{path.distance_km:.0f} km"
     if path.bearing_deg is not None and path.back_bearing_deg is not None:
         way += f", bearing {path.bearing_deg:.0f}°, back {path.back_bearing_deg:.0f}°"
@@ -307,7 +317,8 @@ def _antenna(antenna: AntennaOnPath) -> list[str]:
     name = antenna.name or "Station"
     lines = wrapped(
         f"{name}: {antenna.kind}, {antenna.height_m:.1f} m up, ground: {antenna.ground}; feed: "
-        f"{antenna.feed}, SWR {antenna.network.swr:.1f}, {antenna.network.loss_db:.1f} dB lost."
+        f"{antenna.feed}, SWR {antenna.network.swr:.1f}, "
+        f"{round(antenna.network.loss_db, 1) + 0.0:.1f} dB lost."
     )
     wide = max(8, *(len(p.label) for p in (*antenna.positions, *antenna.arms)))
     lines.append(f"  {'relay':<{wide}}  overhead   hears O   hears X   O over X   sends into O")
@@ -318,21 +329,30 @@ def _antenna(antenna: AntennaOnPath) -> list[str]:
         hand = position.overhead_hand.value if position.overhead_hand else "no hand"
         sends = "-" if position.ordinary_share is None else f"{100 * position.ordinary_share:.0f} %"
         label = f"({position.label})" if position in extra else position.label
+        # Adding zero after rounding leaves no "-0.0".
+        ordinary, extraordinary, over = (
+            round(db, 1) + 0.0
+            for db in (
+                position.ordinary_gain_dbi,
+                position.extraordinary_gain_dbi,
+                position.ordinary_over_extraordinary_db,
+            )
+        )
         lines.append(
-            f"  {label:<{wide}}  {hand:<8}{position.ordinary_gain_dbi:6.1f} dBi"
-            f"{position.extraordinary_gain_dbi:6.1f} dBi"
-            f"{position.ordinary_over_extraordinary_db:+7.1f} dB{sends:>10}  {mark}".rstrip()
+            f"  {label:<{wide}}  {hand:<8}{ordinary:6.1f} dBi{extraordinary:6.1f} dBi"
+            f"{over:+7.1f} dB{sends:>10}  {mark}".rstrip()
         )
     lines.append("  * to receive, + to answer; (in brackets) one arm alone, not in the relay")
-    over = f"The {antenna.wave.value} wave: {antenna.level_over_dipole_db:+.1f} dB over one dipole"
+    gained = round(antenna.level_over_dipole_db, 1) + 0.0
+    said = f"The {antenna.wave.value} wave: {gained:+.1f} dB over one dipole"
     if antenna.both_ends_db is not None:
-        over += f", {antenna.both_ends_db:+.1f} dB if both ends do as well"
+        said += f", {round(antenna.both_ends_db, 1) + 0.0:+.1f} dB if both ends do as well"
     if antenna.fade_depth_before_db is not None and antenna.fade_depth_after_db is not None:
-        over += (
+        said += (
             f"; fades of {_depth(antenna.fade_depth_before_db)} on one dipole become "
             f"{_depth(antenna.fade_depth_after_db)}"
         )
-    lines += wrapped(f"{over}.")
+    lines += wrapped(f"{said}.")
     if antenna.causes:
         listed = ", ".join(
             f"{c.cause} {_rejection(c.rejection_without_db)}" for c in antenna.causes
@@ -346,7 +366,7 @@ def _depth(db: float) -> str:
 
 
 def _rejection(db: float) -> str:
-    return "60 or more" if db >= GREATEST_REJECTION_DB else f"{db:.0f}"
+    return "60 or more" if db >= GREATEST_REJECTION_DB else f"{round(db) + 0:d}"
 
 
 def _why(answer: PathAnswer) -> list[str]:

@@ -3,11 +3,19 @@
 import runpy
 from pathlib import Path
 
+import pytest
 from click.testing import CliRunner
 
 from magion.cli import main
+from tests.demo import DEMO, LARCH, said
 
-EXAMPLES = Path(__file__).parents[2] / "examples"
+ROOT = Path(__file__).parents[2]
+EXAMPLES, PICTURES = ROOT / "examples", ROOT / "docs" / "pictures"
+
+
+def run_main(name, *arguments):
+    """An example with fewer steps than it takes by itself."""
+    runpy.run_path(str(EXAMPLES / name))["main"](*arguments)
 
 
 def test_one_path(capsys):
@@ -33,3 +41,47 @@ def test_profile_of_the_demo():
     result = CliRunner().invoke(main, [*tokens, "--profile", str(EXAMPLES / "profile.csv")])
     assert result.exit_code == 0
     assert "measured profile profile.csv" in " ".join(result.output.split())
+
+
+def test_pictures(tmp_path):
+    run_main("pictures.py", tmp_path / "pictures", 120.0)
+    drawn = {f.name: f.read_bytes() for f in (tmp_path / "pictures").iterdir()}
+    assert set(drawn) == {"day.png", "antenna.png", "sky.png", "wall_table.txt"}
+    assert set(drawn) == {f.name for f in PICTURES.iterdir()}
+    for name, content in drawn.items():
+        shipped = (PICTURES / name).read_bytes()
+        assert len(shipped) < 200_000
+        if name.endswith(".png"):
+            assert content.startswith(b"\x89PNG")
+            assert shipped.startswith(b"\x89PNG")
+            # As wide and as high; the content of the day hangs on its steps.
+            assert content[16:24] == shipped[16:24]
+
+    def table(content):
+        """The wall table without what hangs on the climatology."""
+        lines = content.decode("utf-8").splitlines()
+        return [line for line in lines if not line.startswith(("Overhead: foF2", "(CCIR"))]
+
+    assert table(drawn["wall_table.txt"]) == table((PICTURES / "wall_table.txt").read_bytes())
+
+
+def test_readme_shows_the_pictures_that_the_examples_make():
+    text = (ROOT / "README.md").read_text(encoding="utf-8")
+    assert "](docs/pictures/day.png)" in text
+    table = (PICTURES / "wall_table.txt").read_text(encoding="utf-8")
+    assert f"```\n{table}```\n" in text
+
+
+@pytest.mark.usefixtures("once")
+def test_readme_quotes_the_answer_of_the_demo_station():
+    text = (ROOT / "README.md").read_text(encoding="utf-8")
+    first = said("path", *DEMO, "--station", LARCH).split("\n\n")[0]
+    assert f"```\n{first}\n```\n" in text
+
+
+def test_two_nets(capsys):
+    run_main("two_nets.py", 1)
+    lines = capsys.readouterr().out.splitlines()
+    assert [line.split(",")[0] for line in lines[::2]] == ["Larch Hut", "Cedar Ridge"]
+    assert all("serves 1 of 1" in line for line in lines[::2])
+    assert [line.split()[0] for line in lines[1::2]] == ["Scree", "Puma"]

@@ -1,4 +1,4 @@
-"""The JSON of `path`, `field` and `wave` against the schemas that ship with the package.
+"""The JSON of the commands against the schemas that ship with the package.
 
 The schemas are the contract: every key of it is required, a key that does not
 apply is null, keys not known to it are admitted.
@@ -13,22 +13,36 @@ import re
 from functools import cache
 from importlib.resources import files
 from pathlib import Path
+from typing import get_args, get_origin, get_type_hints
 
 import jsonschema
 import numpy as np
 import pytest
-from click.testing import CliRunner
 
 from magion.answers import records
-from magion.answers.point import FieldAnswer, OneWave, WaveAnswer
-from magion.cli import main
+from magion.answers.day import DayAnswer, answer_day
+from magion.answers.feed import FeedAnswer, answer_feed
+from magion.answers.inputs import IonosphereInput
+from magion.answers.net import NetAnswer, answer_net
+from magion.answers.path import answer_path
+from magion.answers.pattern import AntennaAnswer, answer_antenna
+from magion.answers.point import FieldAnswer, WaveAnswer
+from magion.answers.sense import SenseAnswer, answer_station
+from magion.cli.arguments import INSTANT
+from magion.formats.partners import read_partners
 from magion.formats.profile import read_profile
-from magion.render.data import to_json
+from magion.formats.station import read_station
+from magion.geometry import parse_place
+from magion.render.data import plain, to_json
+from tests.demo import DECEMBER, DEMO, EXAMPLES, JUNE, LARCH, SOUTH, said
+
+pytestmark = pytest.mark.usefixtures("once")
 
 FORMATS = Path(__file__).parents[2] / "docs" / "formats.md"
-JUNE, JUNE_NIGHT = "2026-06-21T12:00Z", "2026-06-21T00:00Z"
+JUNE_NIGHT = "2026-06-21T00:00Z"
 NEAR = ["46.50,11.35", "JN57rb"]
-PROFILE = "<profile>"  # stands for the file that a test writes
+PROFILE = "<profile>"  # stands for a file, as the names of stations do
+GAPS = "<gaps>"
 
 PATHS = {
     "both waves": [*NEAR, "-f", "5.3", "--time", JUNE, "--fof2", "6.1", "--fof2-error", "0.4"],
@@ -39,6 +53,71 @@ PATHS = {
     "several rays": ["15.0,0.0", "5.0,0.0", "-f", "10", "--time", JUNE, "--flux", "120"],
     "below the gyrofrequency": [*NEAR, "-f", "1.2", "--time", JUNE_NIGHT, "--flux", "120"],
     "measured profile": [*NEAR, "-f", "4.0", "--time", JUNE, "--profile", PROFILE],
+    "demo station": [*DEMO, "--station", "<demo>"],
+    "half-wave line": [*DEMO, "--station", "<half-wave line>"],
+    "loops": [*DEMO, "--station", "<loops>"],
+    "hybrid": [*DEMO, "--station", "<hybrid>"],
+    "receive only": [*DEMO, "--station", "<receive only>"],
+    "single dipole": [*DEMO, "--station", "<single dipole>"],
+    "no wave at the station": [*NEAR, "-f", "28", *DEMO[4:], "--station", "<demo>"],
+    "one wave at the station": [*NEAR, "-f", "7.4", *DEMO[4:], "--station", "<demo>"],
+    "outside the impedance table": [*NEAR, "-f", "3.0", *DEMO[4:], "--station", "<demo>"],
+    "southern station": [*SOUTH, "-f", "7.1", "--time", DECEMBER, "--station", "<southern>"],
+    "station at the dip equator": [
+        *["15.0,0.0", "5.0,0.0", "-f", "10", "--time", JUNE, "--flux", "120"],
+        *["--station", "<loops>"],
+    ],
+}
+DAY = [*DEMO[:2], "--step", "120", "--time", JUNE, "--flux", "130"]
+DAYS = {
+    "demo station": [*DAY, "-f", "5.3", "-f", "7.1", "--station", "<demo>"],
+    "no station": [*DAY, "-f", "5.3", "-f", "7.1"],
+    "loops": [*DAY, "-f", "5.3", "--station", "<loops>"],
+    "no wave": [*DAY, "-f", "28", "--station", "<demo>"],
+    "gaps in the readings": [*DAY[:4], "--time", "2026-12-21", "-f", "5.3", "--readings", GAPS],
+}
+NET = ["46.50,11.35", "--time", JUNE, "--flux", "130"]
+NETS = {
+    "demo station": [
+        *["Larch Hut", "47.10,10.85", "46.90,12.20", "-f", "5.3", "-f", "3"],
+        *[*NET[1:], "--station", "<demo>"],
+    ],
+    "no station": [*NET, "47.10,10.85", "46.90,12.20", "-f", "5.3", "-f", "3"],
+    "no wave": [*NET, "47.10,10.85", "-f", "28"],
+    "southern": ["41.0S,71.3W", "40.2S,71.6W", "-f", "7.1", "--time", DECEMBER],
+    "whole day": [*NET, "47.10,10.85", "-f", "5.3", "--day"],
+}
+STATION = ["46.50,11.35", "-f", "1.2", "-f", "5.3"]
+STATIONS = {
+    "no time": [*STATION, "--elevation", "30"],
+    "across HF": ["46.50,11.35", "--height", "120"],
+    "demo station": [*STATION, "--time", JUNE, "--flux", "130", "--station", "<demo>"],
+    "southern": ["Cedar Ridge", *STATION[1:], "--time", DECEMBER, "--station", "<southern>"],
+    "loops at the dip equator": ["10.0,5.0", *STATION[1:], "--time", JUNE, "--station", "<loops>"],
+    "measured profile": [*STATION, "--time", JUNE, "--profile", PROFILE],
+    "magnetic pole": ["85.8,139.2", *STATION[1:]],
+}
+FEEDS = {
+    "no station": ["-f", "5.3"],
+    "demo station": ["-f", "5.3", "--station", "<demo>", "--band", "5.2:5.4:0.1"],
+    "southern": ["-f", "7.1", "--station", "<southern>"],
+    "half-wave line": ["-f", "5.3", "--station", "<half-wave line>"],
+    "loops": ["-f", "5.3", "--station", "<loops>"],
+    "hybrid": ["-f", "5.3", "--station", "<hybrid>"],
+    "single dipole": ["-f", "5.3", "--station", "<single dipole>"],
+    "outside the impedance table": ["-f", "14", "--station", "<demo>"],
+    "leads longer than a quarter wave": ["-f", "60", "--station", "<long leads>"],
+}
+ANTENNAS = {
+    "demo station": ["-f", "5.3", "--station", "<demo>"],
+    "southern": ["-f", "7.1", "--station", "<southern>"],
+    "half-wave line": ["-f", "5.3", "--station", "<half-wave line>"],
+    "loops": ["-f", "1.85", "--station", "<loops>"],
+    "hybrid": ["-f", "5.3", "--station", "<hybrid>"],
+    "single dipole": ["-f", "5.3", "--station", "<single dipole>"],
+    "along the ground": [
+        *["-f", "5.3", "--station", "<demo>", "--elevation", "0:10:10", "--azimuth", "20"],
+    ],
 }
 FIELDS = {
     "mid latitude": ["46.50,11.35", "--height", "100", "--date", "2026-06-21"],
@@ -56,8 +135,28 @@ WAVES = {
     "resonance": ["-f", "1", "--plasma", "0.6", "--gyro", "0.8", "--angle", "90"],
     "no plasma": ["-f", "5.3", "--plasma", "0", "--gyro", "0", "--angle", "0"],
 }
-NUMBER = {"path": "path-1", "field": "field", "wave": "wave"}
-CASES = [("path", c) for c in PATHS] + [("field", c) for c in FIELDS] + [("wave", c) for c in WAVES]
+ALL = {
+    "path": PATHS,
+    "day": DAYS,
+    "net": NETS,
+    "station": STATIONS,
+    "feed": FEEDS,
+    "antenna": ANTENNAS,
+    "field": FIELDS,
+    "wave": WAVES,
+}
+NUMBER = {c: c if c in ("field", "wave") else f"{c}-1" for c in ALL}
+CASES = [(command, case) for command, cases in ALL.items() for case in cases]
+ROOTS = {
+    "path": records.PathAnswer,
+    "day": DayAnswer,
+    "net": NetAnswer,
+    "station": SenseAnswer,
+    "feed": FeedAnswer,
+    "antenna": AntennaAnswer,
+    "field": FieldAnswer,
+    "wave": WaveAnswer,
+}
 
 
 def refuse(constant):
@@ -65,23 +164,25 @@ def refuse(constant):
 
 
 @pytest.fixture(scope="module")
-def answer(tmp_path_factory):
+def answer(tmp_path_factory, stations):
     """The JSON answer of a case, asked for once."""
-    profile = tmp_path_factory.mktemp("profile") / "chapman.csv"
+    folder = tmp_path_factory.mktemp("files")
+    profile = folder / "chapman.csv"
     height_km = np.arange(90.0, 451.0, 5.0)
     z = (height_km - 270.0) / 45.0
     density = 4e11 * np.exp(0.5 * (1.0 - z - np.exp(-z)))
     rows = [f"{h:g},{n:.6g}" for h, n in zip(height_km, density, strict=True)]
     profile.write_text("\n".join(["height_km,electron_density_m3", *rows]), encoding="utf-8")
+    gaps = folder / "gaps.csv"
+    gaps.write_text("time_utc,fof2_mhz\n2026-12-21T08:00Z,6.5\n2026-12-21T10:00Z,7.2\n")
+    known = {f"<{name}>": file for name, file in stations.items()}
+    known |= {PROFILE: profile, GAPS: gaps}
 
     @cache
     def ask(command, case, form="json"):
-        words = {"path": PATHS, "field": FIELDS, "wave": WAVES}[command][case]
-        words = [str(profile) if w == PROFILE else w for w in words]
-        result = CliRunner().invoke(main, [command, *words, "--format", form])
-        assert result.exit_code == 0, result.output
-        assert result.stderr == ""
-        return json.loads(result.stdout, parse_constant=refuse) if form == "json" else result.stdout
+        words = [str(known.get(w, w)) for w in ALL[command][case]]
+        out = said(command, *words, "--format", form)
+        return json.loads(out, parse_constant=refuse) if form == "json" else out
 
     return lambda *case, **how: copy.deepcopy(ask(*case, **how))
 
@@ -129,11 +230,12 @@ def objects(part, root, name=""):
     part = follow(part, root)
     yield name, part
     for key, inner in keys_of(part, root).items():
-        inner = follow(inner, root)
+        inner, full = follow(inner, root), f"{name}.{key}".lstrip(".")
         if inner.get("type") == "array":
             inner = follow((inner.get("prefixItems") or [inner["items"]])[0], root)
+            full += "[]"
         if keys_of(inner, root):
-            yield from objects(inner, root, f"{name}.{key}".lstrip("."))
+            yield from objects(inner, root, full)
 
 
 @pytest.mark.parametrize("command", NUMBER)
@@ -183,19 +285,32 @@ def places_in(value, where=()):
 
 @pytest.mark.parametrize(
     ("command", "case"),
-    [("path", "several rays"), ("field", "mid latitude"), ("wave", "ordinary case")],
+    [
+        ("path", "several rays"),
+        ("path", "demo station"),
+        ("day", "gaps in the readings"),
+        ("net", "demo station"),
+        ("station", "no time"),
+        ("feed", "demo station"),
+        ("antenna", "along the ground"),
+        ("field", "mid latitude"),
+        ("wave", "ordinary case"),
+    ],
 )
 def test_any_key_left_out_is_noticed(answer, command, case):
     found, check, tried = answer(command, case), validator(command), 0
+    # Of a long list of alike objects two are enough.
+    for cells in (part["cells"] for _, part in list(places_in(found)) if "cells" in part):
+        del cells[2:]
     for where, part in places_in(found):
         for key in list(part):
             value = part.pop(key)
-            errors = [e.message for e in check.iter_errors(found)]
-            assert errors, f"{key} is missing at {where} and nothing says so"
+            assert not check.is_valid(found), f"{key} is missing at {where} and nothing says so"
             part[key] = value
             tried += 1
     check.validate(found)
-    assert tried > {"path": 100, "field": 11, "wave": 17}[command]
+    fewest = {"path": 100, "day": 30, "net": 40, "station": 80, "feed": 60, "antenna": 25}
+    assert tried > (fewest | {"field": 11, "wave": 17})[command]
 
 
 WRONG = [
@@ -221,16 +336,47 @@ WRONG = [
     (("path", "midpoint"), None),
     (("field", "dip_deg"), None),
 ]
+WRONG = [("path", "both waves", *wrong) for wrong in WRONG] + [
+    ("path", "demo station", ("antenna", "wave"), None),
+    ("path", "demo station", ("antenna", "has_hand"), "yes"),
+    ("path", "demo station", ("antenna", "causes", 0, "cause"), "bad luck"),
+    ("path", "demo station", ("antenna", "network", "swr"), 0.9),
+    ("path", "demo station", ("antenna", "positions"), []),
+    ("path", "demo station", ("antenna", "positions", 0, "ordinary_share"), 1.1),
+    ("path", "demo station", ("antenna", "positions", 0, "overhead_hand"), "left"),
+    ("day", "demo station", ("time_utc", 0), "00:00"),
+    ("day", "demo station", ("frequencies", 0, "state", 0), "some"),
+    ("day", "demo station", ("frequencies", 0, "probability"), []),
+    ("day", "demo station", ("frequencies", 0, "elevation_deg"), [[], [], []]),
+    ("day", "demo station", ("frequencies", 0, "plan"), []),
+    ("day", "demo station", ("frequencies", 0, "receive", 0), ""),
+    ("net", "demo station", ("partners",), []),
+    ("net", "demo station", ("hours", 0, "cells", 0, "state"), "unknown"),
+    ("net", "demo station", ("hours", 0, "frequencies", 0, "reached"), 1.5),
+    ("net", "demo station", ("hours", 0, "cells", 0, "served_by"), None),
+    ("station", "demo station", ("rows", 0, "overhead"), None),
+    ("station", "demo station", ("rows", 0, "cells", 0, "shape"), "round"),
+    ("station", "demo station", ("rows", 0, "cells", 0, "ordinary_hand"), None),
+    ("station", "demo station", ("date",), "21.6.2026"),
+    ("feed", "demo station", ("band",), []),
+    ("feed", "demo station", ("cautions",), []),
+    ("feed", "demo station", ("line", "cut_ft"), None),
+    ("feed", "demo station", ("positions", 0, "rejection_db"), -1.0),
+    ("antenna", "demo station", ("positions", 0, "right_dbi"), []),
+    ("antenna", "demo station", ("positions", 0, "right_dbi", 0, 0), None),
+    ("antenna", "demo station", ("elevation_deg", 0), 91.0),
+]
 
 
-@pytest.mark.parametrize(("where", "value"), WRONG)
-def test_wrong_values_are_noticed(answer, where, value):
-    found = answer("path", "both waves")
+@pytest.mark.parametrize(("command", "case", "where", "value"), WRONG)
+def test_wrong_values_are_noticed(answer, command, case, where, value):
+    found = answer(command, case)
     part = found
     for step in where[:-1]:
         part = part[step]
+    assert part[where[-1]] != value
     part[where[-1]] = value
-    assert not validator("path").is_valid(found)
+    assert not validator(command).is_valid(found)
 
 
 def test_waves_are_two_and_in_order(answer):
@@ -299,7 +445,7 @@ def test_azimuths_of_launch_and_arrival_look_along_the_path(answer, case):
             assert turn(ray["arrival"]["azimuth_deg"], found["path"]["back_bearing_deg"]) < 60.0
 
 
-@pytest.mark.parametrize("case", [c for c in PATHS if c != "no wave"])
+@pytest.mark.parametrize("case", [c for c in PATHS if not c.startswith("no wave")])
 def test_hands_for_sending_back(answer, case):
     """On the reversed path always the opposite hand, whatever the far station launches."""
     found = answer("path", case)
@@ -326,37 +472,31 @@ def test_the_hand_at_launch_is_an_answer_of_its_own(answer):
     assert ordinary["transmit_hand"] == "LHCP"
 
 
-RECORDS = {
-    ("path", ""): records.PathAnswer,
-    ("path", "transmitter"): records.End,
-    ("path", "receiver"): records.End,
-    ("path", "path"): records.PathGeometry,
-    ("path", "path.midpoint"): records.Midpoint,
-    ("path", "field"): records.MidpointField,
-    ("path", "ionosphere"): records.MidpointIonosphere,
-    ("path", "waves"): records.WaveOnPath,
-    ("path", "waves.launch"): records.Launch,
-    ("path", "waves.arrival"): records.Arrival,
-    ("path", "waves.index"): records.IndexAtApex,
-    ("path", "waves.limiting"): records.Limiting,
-    ("path", "waves.rays"): records.RayAnswer,
-    ("path", "advice"): records.Advice,
-    ("path", "advice.state_probabilities"): records.StateProbabilities,
-    ("path", "advice.rejection_db"): records.Rejection,
-    ("field", ""): FieldAnswer,
-    ("wave", ""): WaveAnswer,
-    ("wave", "ordinary"): OneWave,
-}
+def record_in(hint):
+    """The record within a type, if there is one, and whether it stands in a tuple."""
+    if dataclasses.is_dataclass(hint):
+        return hint, False
+    for inner in get_args(hint):
+        record, listed = record_in(inner)
+        if record is not None:
+            return record, listed or get_origin(hint) is tuple
+    return None, False
 
 
-@pytest.mark.parametrize(("command", "name"), RECORDS)
-def test_record_has_the_keys_of_the_contract(command, name):
+def records_of(kind, name=""):
+    """Dotted name to keys, of a record and of those within it."""
+    found = {name: {f.name for f in dataclasses.fields(kind)}}
+    for key, hint in get_type_hints(kind).items():
+        record, listed = record_in(hint)
+        if record is not None:
+            found |= records_of(record, f"{name}.{key}".lstrip(".") + ("[]" if listed else ""))
+    return found
+
+
+@pytest.mark.parametrize("command", NUMBER)
+def test_records_have_the_keys_of_the_contract_and_no_others(command):
     root = schema(command)
-    part = next(p for n, p in objects(root, root) if n == name)
-    missing = set(keys_of(part, root)) - {
-        f.name for f in dataclasses.fields(RECORDS[command, name])
-    }
-    assert not missing
+    assert records_of(ROOTS[command]) == {n: set(keys_of(p, root)) for n, p in objects(root, root)}
 
 
 UNIT = re.compile(r"\[([^\]]+)\]$")
@@ -368,7 +508,7 @@ def units_of_schema(command):
     return {
         f"{name}.{key}".lstrip("."): (UNIT.findall(inner.get("description", "")) or [None])[0]
         for name, part in objects(root, root)
-        if not name.startswith("waves.rays")
+        if not name.startswith("waves[].rays")
         for key, inner in keys_of(part, root).items()
     }
 
@@ -384,10 +524,17 @@ def test_numbers_of_a_schema_carry_their_unit(command):
         "ms": "ms",
         "hz": "Hz",
         "min": "min",
+        "m": "m",
+        "ft": "ft",
+        "ohm": "ohm",
+        "dbi": "dB",
     }
     root = schema(command)
     for _, part in objects(root, root):
         for key, inner in keys_of(part, root).items():
+            while inner.get("type") == "array":
+                described = inner["description"]
+                inner = inner.get("items", {}) | {"description": described}
             kinds = inner.get("type")
             if "number" not in ([kinds] if isinstance(kinds, str) else kinds or []):
                 continue
@@ -407,12 +554,13 @@ def test_page_of_formats_has_every_key_with_its_unit(command):
         if line.startswith("| `"):
             for key in re.findall(r"`([^`]+)`", cells[0]):
                 rows[key] = None if cells[2] == "" else cells[2]
+    # One table stands for parts that are alike.
+    alike = {"wave": "extraordinary.", "path": "antenna.arms[].", "station": "rows[].overhead."}
     wanted = {
-        k.replace("waves.", "waves[].").replace("changes.", "changes[]."): u
+        k: u
         for k, u in units_of_schema(command).items()
+        if not k.startswith(alike.get(command, "-"))
     }
-    if command == "wave":  # one table stands for both waves
-        wanted = {k: u for k, u in wanted.items() if not k.startswith("extraordinary.")}
     assert rows == wanted
 
 
@@ -454,3 +602,202 @@ def test_csv_of_a_point_is_one_row(answer, command, case):
         for step in key.split("."):
             value = value[step]
         assert cell == str(value) if isinstance(value, str) else float(cell) == value
+
+
+def table_of(answer, command, case):
+    return list(csv.DictReader(io.StringIO(answer(command, case, form="csv"))))
+
+
+def cell_of(value):
+    """A value as a cell of CSV."""
+    if isinstance(value, bool):
+        return str(value).lower()
+    return "" if value is None else str(value)
+
+
+def dotted(part, prefix=""):
+    """What a cell can hold of an object, under dotted keys."""
+    found = {}
+    for key, value in part.items():
+        if isinstance(value, dict):
+            found |= dotted(value, f"{prefix}{key}.")
+        elif not isinstance(value, list):
+            found[f"{prefix}{key}"] = cell_of(value)
+    return found
+
+
+@pytest.mark.parametrize("case", ["demo station", "outside the impedance table", "single dipole"])
+def test_csv_of_a_path_has_the_columns_of_the_antenna(answer, case):
+    found = answer("path", case)
+    named = {
+        f"antenna.{f.name}"
+        for f in dataclasses.fields(records.AntennaOnPath)
+        if f.name not in ("causes", "network", "positions", "arms")
+    }
+    named |= {f"antenna.network.{k}" for k in ("path_deg", "phase_deg", "amplitude_db", "swr")}
+    known = {} if found["antenna"] is None else dotted(found["antenna"], "antenna.")
+    for row in table_of(answer, "path", case):
+        assert named <= set(row)
+        assert {k: row[k] for k in named} == {k: known.get(k, "") for k in named}
+        assert row["advice.relay_position"] == cell_of(found["advice"]["relay_position"])
+
+
+@pytest.mark.parametrize("case", FEEDS)
+def test_csv_of_a_feed_has_a_row_a_frequency(answer, case):
+    assert table_of(answer, "feed", case) == [dotted(r) for r in answer("feed", case)["band"]]
+
+
+@pytest.mark.parametrize("case", ["demo station", "along the ground"])
+def test_csv_of_an_antenna_has_a_row_a_position_and_direction(answer, case):
+    found, table = answer("antenna", case), table_of(answer, "antenna", case)
+    elevations, azimuths = found["elevation_deg"], found["azimuth_deg"]
+    gains = ("right_dbi", "left_dbi", "right_over_left_db")
+    assert table == [
+        {"label": p["label"], "elevation_deg": str(e), "azimuth_deg": str(a)}
+        | {g: str(p[g][i][j]) for g in gains}
+        for p in found["positions"]
+        for i, e in enumerate(elevations)
+        for j, a in enumerate(azimuths)
+    ]
+
+
+@pytest.mark.parametrize("case", ["measured profile", "demo station"])
+def test_csv_of_a_station_has_a_row_a_frequency_and_direction(answer, case):
+    found, table = answer("station", case), table_of(answer, "station", case)
+    wanted = []
+    for row in found["rows"]:
+        own = dotted({k: v for k, v in row.items() if k not in ("cells", "overhead")})
+        wanted += [own | dotted(cell) for cell in (row["overhead"], *row["cells"])]
+    assert {"state_probabilities.both", "state_probabilities.none"} <= set(table[0])
+    for row, want in zip(table, wanted, strict=True):
+        assert {k: row.get(k, "") for k in want} == want
+
+
+@pytest.mark.parametrize("case", ["demo station", "no station", "gaps in the readings"])
+def test_csv_of_a_day_has_a_row_a_step_and_frequency(answer, case):
+    found, table = answer("day", case), table_of(answer, "day", case)
+    n = len(found["time_utc"])
+    assert len(table) == n * len(found["frequencies"])
+    for k, frequency in enumerate(found["frequencies"]):
+        for i in range(n):
+            row = dict(table[k * n + i])
+            assert float(row.pop("frequency_mhz")) == frequency["frequency_mhz"]
+            for key in ("time_utc", "solar_zenith_deg", "fof2_mhz", "fxf2_mhz", "fof2_error_mhz"):
+                assert row.pop(key) == cell_of(found[key][i])
+            for key in ("state", "wave", "receive", "transmit", "rejection_db"):
+                assert row.pop(key) == cell_of(frequency[key][i])
+            for w, wave in enumerate(("ordinary", "extraordinary")):
+                assert row.pop(f"{wave}.muf_mhz") == cell_of(found["muf_mhz"][w][i])
+                for key in (
+                    *("receive_hand", "elevation_deg", "azimuth_deg", "group_delay_ms"),
+                    *("absorption_db", "level_db", "axial_ratio_db"),
+                ):
+                    assert row.pop(f"{wave}.{key}") == cell_of(frequency[key][w][i])
+            assert not row
+
+
+@pytest.mark.parametrize("case", ["demo station", "no wave", "whole day"])
+def test_csv_of_a_net_has_a_row_a_partner_frequency_and_hour(answer, case):
+    found, table = answer("net", case), table_of(answer, "net", case)
+    places = {p["name"]: dotted(p) for p in found["partners"]}
+    wanted = [
+        {"time_utc": hour["time_utc"], "served_by": " ".join(cell["served_by"])}
+        | dotted(cell)
+        | {k: v for k, v in places[cell["partner"]].items() if k != "name"}
+        for hour in found["hours"]
+        for cell in hour["cells"]
+    ]
+    assert table == wanted
+
+
+def test_numbers_are_those_of_the_records(answer):
+    """Unrounded: the JSON says what the call of the library says."""
+    larch, noon = read_station(LARCH), INSTANT.convert(JUNE, None, None)
+    home, partner = parse_place("46.50,11.35"), parse_place("47.10,10.85")
+    sky = IonosphereInput(flux=130.0)
+    calls = {
+        "path": lambda: answer_path(partner, home, 5.3, noon, sky, station=larch),
+        "day": lambda: answer_day(
+            partner,
+            home,
+            [5.3, 7.1],
+            noon,
+            sky,
+            step_min=120.0,
+            station=larch,
+        ),
+        "net": lambda: answer_net(
+            larch.place,
+            [partner, parse_place("46.90,12.20")],
+            [5.3, 3.0],
+            noon,
+            sky,
+            station=larch,
+        ),
+        "station": lambda: answer_station(home, [1.2, 5.3], noon, sky, station=larch),
+        "feed": lambda: answer_feed(5.3, larch, [5.2, 5.3, 5.4]),
+        "antenna": lambda: answer_antenna(larch, 5.3),
+    }
+    for command, call in calls.items():
+        assert answer(command, "demo station") == plain(call()), command
+
+
+def test_what_the_cases_with_a_station_are_for(answer):
+    def advice(case):
+        return answer("path", case)["advice"]
+
+    demo = answer("path", "demo station")
+    assert demo["advice"]["relay_position"] == "left"
+    first = demo["antenna"]["causes"][0]["cause"]
+    assert demo["advice"]["limited_by"] == demo["antenna"]["limited_by"] == first
+    assert {p["label"] for p in demo["antenna"]["positions"]} == {"left", "right", "wire_a"}
+    assert answer("path", "half-wave line")["antenna"]["has_hand"] is False
+    assert advice("half-wave line")["headline"].startswith("No hand at all")
+    assert advice("half-wave line")["limited_by"] is None
+    for case in ("loops", "receive only", "station at the dip equator"):
+        antenna = answer("path", case)["antenna"]
+        assert antenna["transmit_position"] is antenna["both_ends_db"] is None
+        assert all(p["ordinary_sent_dbi"] is None for p in antenna["positions"])
+    assert answer("path", "single dipole")["antenna"]["causes"] == []
+    assert answer("path", "single dipole")["antenna"]["network"]["phase_deg"] is None
+    assert answer("path", "hybrid")["antenna"]["network"]["path_deg"] is None
+    for case in ("no wave at the station", "outside the impedance table"):
+        assert answer("path", case)["antenna"] is None
+        assert advice(case)["relay_position"] is advice(case)["rejection_db"] is None
+    assert advice("outside the impedance table")["state"] != "none"
+    assert advice("one wave at the station")["state"] == "extraordinary_only"
+    assert advice("one wave at the station")["separation_db"] is None
+    assert answer("path", "one wave at the station")["antenna"]["fade_depth_after_db"] is None
+    assert answer("path", "southern station")["field"]["dip_deg"] < 0.0
+    assert abs(answer("path", "station at the dip equator")["field"]["dip_deg"]) < 20.0
+
+
+def test_what_the_other_cases_are_for(answer):
+    gaps = answer("day", "gaps in the readings")["frequencies"][0]
+    assert {"unknown"} < set(gaps["state"])
+    assert answer("day", "no wave")["frequencies"][0]["state"] == ["none"] * 12
+    assert answer("day", "loops")["frequencies"][0]["transmit"] == [None] * 12
+    assert set(answer("day", "demo station")["frequencies"][0]["receive"]) == {"left", "right"}
+    assert set(answer("day", "no station")["frequencies"][0]["receive"]) == {"LHCP", "RHCP"}
+    assert answer("net", "no wave")["hours"][0]["best_frequency_mhz"] is None
+    assert len(answer("net", "whole day")["hours"]) == 24
+    assert answer("net", "southern")["hours"][0]["cells"][0]["receive"] == "RHCP"
+    assert answer("station", "no time")["rows"][0]["absorption_ratio"] is None
+    assert answer("station", "no time")["height_km"] == 90.0
+    assert answer("station", "demo station")["height_km"] is None
+    assert answer("station", "southern")["name"] == "Cedar Ridge"
+    assert answer("feed", "half-wave line")["has_hand"] is False
+    assert answer("feed", "hybrid")["line"] is None
+    assert answer("feed", "single dipole")["headline"].startswith("One element alone")
+    assert answer("feed", "outside the impedance table")["positions"][0]["rejection_db"] is None
+    assert answer("feed", "leads longer than a quarter wave")["line"]["dip_mhz"] is None
+    assert answer("antenna", "along the ground")["positions"][0]["right_dbi"][0] == [-300.0]
+
+
+def test_example_of_partners_can_be_read(tmp_path):
+    section = FORMATS.read_text(encoding="utf-8").split("## Partners")[1].split("\n## ")[0]
+    file = tmp_path / "net.csv"
+    file.write_text(section.split("```")[1].lstrip("\n"), encoding="utf-8")
+    assert [p.name for p in read_partners(file)] == ["Scree Hut", "Marmot Hut", "Gentian Hut"]
+    for name in ("net_alps.csv", "net_andes.csv"):
+        assert len(read_partners(EXAMPLES / name)) >= 4
