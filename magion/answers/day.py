@@ -51,6 +51,11 @@ MOST_FREQUENCIES: Final = 12
 MUF_STEP_MIN: Final = 30.0
 """MUFs are traced at least this far apart and interpolated between [min]."""
 
+IDEAL_SWITCH: Final = (
+    "Where the elements' impedance is outside the shipped table an ideal switch is taken: there "
+    "the hand is named in place of a relay position."
+)
+
 _NEARLY = 0.97
 _DEGREES_PER_HOUR = 15.0
 
@@ -272,8 +277,10 @@ def answer_day(
     rays = rays_of(scene, frequencies, mufs)
     tell(0.9)
     rows = []
+    lacking = False
     for f, of_frequency in zip(frequencies, rays, strict=True):
         relay = None if station is None else relay_at(station, f)
+        lacking |= station is not None and relay is None
         rows.append(
             _of_frequency(
                 scene, f, of_frequency, mufs, gyro, relay, moments, index, receiver, step_min
@@ -309,7 +316,7 @@ def answer_day(
         ),
         muf_mhz=_spread(mufs.any_layer / 1e6, index, count),
         frequencies=tuple(rows),
-        caveats=_caveats(scene, station, rows, known, ratios),
+        caveats=_caveats(scene, lacking, known, ratios),
     )
 
 
@@ -331,8 +338,7 @@ def _spread(values: FloatArray, index: IntArray, count: int) -> FloatArray:
 
 def _caveats(
     scene: Scene,
-    station: Station | None,
-    rows: list[DayFrequency],
+    lacking: bool,
     known: BoolArray,
     ratios: tuple[float, float, float] | None,
 ) -> tuple[str, ...]:
@@ -341,11 +347,8 @@ def _caveats(
         caveats.append("Steps that the readings do not reach are left out: they are not guessed.")
     if ratios is not None and ratios != (1.0, 1.0, 1.0):
         caveats.append("The whole day is scaled as the values of the instant given ask.")
-    if station is not None and any(r.receive and not any(r.receive) for r in rows):
-        caveats.append(
-            "Where no relay position is given, no wave arrives all day or the elements' impedance "
-            "is outside the shipped table."
-        )
+    if lacking:
+        caveats.append(IDEAL_SWITCH)
     return tuple(caveats)
 
 

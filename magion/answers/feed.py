@@ -177,8 +177,8 @@ class BandRow:
     ----------
     frequency_mhz : float
         Frequency [MHz].
-    line_deg : float
-        Electrical length of the delayed path [deg].
+    line_deg : float or None
+        Electrical length of the delayed path; None of a single element [deg].
     resistance_ohm, reactance_ohm : float or None
         Of each element [ohm].
     phase_deg : float or None
@@ -194,7 +194,7 @@ class BandRow:
     """
 
     frequency_mhz: float
-    line_deg: float
+    line_deg: float | None
     resistance_ohm: float | None
     reactance_ohm: float | None
     phase_deg: float | None
@@ -220,6 +220,9 @@ class FeedAnswer:
         Of the feed point; of each leg [m].
     cable_ohm : float or None
         Characteristic impedance of the cables [ohm].
+    can_transmit : bool or None
+        Whether antenna and feed may carry transmit power; None without a
+        station file.
     arms : tuple of ArmInFeed
         The elements.
     quarter_waves : tuple of QuarterWave
@@ -251,6 +254,7 @@ class FeedAnswer:
     height_m: float | None
     leg_length_m: float | None
     cable_ohm: float | None
+    can_transmit: bool | None
     arms: tuple[ArmInFeed, ...]
     quarter_waves: tuple[QuarterWave, ...]
     line: DelayLine | None
@@ -300,7 +304,11 @@ def answer_feed(
         if station is not None:
             raise InputError("a velocity factor and a station file contradict each other; give one")
     rows = np.asarray(
-        frequency_mhz * np.linspace(1.0 - _BAND_SHARE, 1.0 + _BAND_SHARE, 9)
+        np.linspace(
+            max(frequency_mhz * (1.0 - _BAND_SHARE), FREQUENCY_MHZ[0]),
+            min(frequency_mhz * (1.0 + _BAND_SHARE), FREQUENCY_MHZ[1]),
+            9,
+        )
         if band_mhz is None
         else [require_range("a frequency of the band", b, *FREQUENCY_MHZ, "MHz") for b in band_mhz]
     )
@@ -379,6 +387,7 @@ def _generic(
         height_m=None,
         leg_length_m=None,
         cable_ohm=None,
+        can_transmit=None,
         arms=(),
         quarter_waves=lines,
         line=line,
@@ -450,6 +459,7 @@ def _of_station(
         height_m=antenna.height,
         leg_length_m=leg_length_of(antenna, station.ground),
         cable_ohm=feed.impedance,
+        can_transmit=station.can_transmit,
         arms=tuple(
             ArmInFeed(
                 name=a.name,
@@ -530,7 +540,7 @@ def _band(station: Station, position: RelayPosition, rows: FloatArray) -> tuple[
     return tuple(
         BandRow(
             frequency_mhz=float(rows[i]),
-            line_deg=float(line[i]),
+            line_deg=float(line[i]) if antenna.kind.is_crossed else None,
             resistance_ohm=finite_or_none(load[i].real),
             reactance_ohm=finite_or_none(load[i].imag) if np.isfinite(load[i].real) else None,
             phase_deg=finite_or_none(math.degrees(float(np.angle(ratio[i])))),

@@ -2,14 +2,21 @@
 
 import math
 from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from datetime import datetime, timedelta
 from typing import Final
 
 import numpy as np
 
 from magion.answers.certainty import PathMufs, state_of
-from magion.answers.day import Progress, chances_at, gyro_at_peaks, interpolated_mufs, rays_of
+from magion.answers.day import (
+    IDEAL_SWITCH,
+    Progress,
+    chances_at,
+    gyro_at_peaks,
+    interpolated_mufs,
+    rays_of,
+)
 from magion.answers.inputs import IonosphereInput, instant, require_frequency
 from magion.answers.modes import ModeRay, require_length
 from magion.answers.reception import RelayAt, at_antenna, positions_on_path, relay_at
@@ -232,6 +239,7 @@ def answer_net(
         If the date is outside the field model.
     """
     frequencies = [require_frequency(f) for f in frequencies_mhz]
+    partners = _each_once(partners)
     for count, most, what in (
         (len(frequencies), MOST_FREQUENCIES, "frequencies"),
         (len(partners), MOST_PARTNERS, "partners"),
@@ -284,9 +292,7 @@ def answer_net(
         columns.append(_cells(scene, name, frequencies, relays, moments, control))
         tell((k + 1) / len(partners))
     if any(r is None for r in relays) and station is not None:
-        caveats.append(
-            "Where the elements' impedance is outside the shipped table an ideal switch is taken."
-        )
+        caveats.append(IDEAL_SWITCH)
     hours = []
     for h, m in enumerate(moments):
         cells = tuple(c for column in columns for c in column[h])
@@ -300,6 +306,24 @@ def answer_net(
         hours=tuple(hours),
         caveats=tuple(dict.fromkeys(caveats)),
     )
+
+
+def _each_once(partners: Sequence[Place]) -> list[Place]:
+    """Partners without repeats; those without a name are named by their coordinates."""
+    found: dict[tuple[float, float], Place] = {}
+    for p in partners:
+        found.setdefault((p.latitude_deg, p.longitude_deg), p)
+    names: set[str] = set()
+    named = []
+    for p in found.values():
+        name = _name(p)
+        if name in names and p.name is None:
+            name = f"{p.latitude_deg:.5f},{p.longitude_deg:.5f}"
+        if name in names:
+            raise InputError(f"two partners are named {name}; accepted: each name once")
+        names.add(name)
+        named.append(replace(p, name=name))
+    return named
 
 
 def _name(place: Place) -> str:

@@ -41,9 +41,12 @@ def give(
         If the file cannot be written.
     """
     from magion.render.data import dotted_record, to_csv, to_json
+    from magion.render.text import can_show
 
     if form == "json":
         text = to_json(answer)
+        if output is None and not can_show(text, getattr(sys.stdout, "encoding", None)):
+            text = to_json(answer, ascii_only=True)
     elif form == "csv":
         text = to_csv([dotted_record(answer)] if rows is None else rows(answer))
     else:

@@ -42,20 +42,22 @@ def plain(value: Any) -> Any:
     return value
 
 
-def to_json(record: Any) -> str:
+def to_json(record: Any, *, ascii_only: bool = False) -> str:
     """A record as strict JSON.
 
     Parameters
     ----------
     record : record
         A frozen record.
+    ascii_only : bool
+        Whether to write other signs as escapes.
 
     Returns
     -------
     str
         JSON text with a final line end.
     """
-    return json.dumps(plain(record), indent=2, ensure_ascii=False, allow_nan=False) + "\n"
+    return json.dumps(plain(record), indent=2, ensure_ascii=ascii_only, allow_nan=False) + "\n"
 
 
 def _cell(value: Any) -> str:

@@ -124,14 +124,15 @@ def _relay_rows(answer: FeedAnswer) -> list[str]:
     made = "line" if answer.line is not None else "90°"
     for p in answer.positions:
         head = f"  {p.label:<{wide}}  "
-        rows += wrapped(_position(p, made), " " * len(head), head)
-    if answer.has_hand:
+        rows += wrapped(_position(p, made, bool(answer.can_transmit)), " " * len(head), head)
+    if answer.has_hand and answer.can_transmit:
         rows.append("  A wave heard on one hand is answered with the other: change over to send.")
+    if answer.has_hand:
         rows.append("  The legs of one dipole swapped, the two hands change places.")
     return rows
 
 
-def _position(position: PositionInFeed, made: str) -> str:
+def _position(position: PositionInFeed, made: str, sends: bool) -> str:
     if position.single_arm is not None:
         return f"arm {position.single_arm} alone, no hand"
     line = f"{made} in arm {position.delayed_arm}: "
@@ -141,7 +142,8 @@ def _position(position: PositionInFeed, made: str) -> str:
         return line + f"no hand, the two differ by {position.rejection_db:.1f} dB"
     hand = position.hand.value
     down = f"{position.rejection_db:.0f}" if position.rejection_db < 59.5 else "60+"
-    return line + f"hears and sends {hand}, the other {down} dB down"
+    does = "hears and sends" if sends else "hears"
+    return line + f"{does} {hand}, the other {down} dB down"
 
 
 def _cell(value: float | None, form: str, wide: int) -> str:

@@ -38,6 +38,28 @@ _ASCII = str.maketrans(
 _ASCII_NARROW = str.maketrans({"°": "d", "…": "~", "≤": "<", "≥": ">"})
 
 
+def can_show(text: str, encoding: str | None) -> bool:
+    """Whether a terminal of some encoding can show a text.
+
+    Parameters
+    ----------
+    text : str
+        Any text.
+    encoding : str or None
+        Encoding of the terminal.
+
+    Returns
+    -------
+    bool
+        False also where the encoding is not known.
+    """
+    try:
+        text.encode(encoding or "ascii")
+    except (UnicodeEncodeError, LookupError):
+        return False
+    return True
+
+
 def for_encoding(text: str, encoding: str | None) -> str:
     """Text that a terminal of some encoding can show.
 
@@ -53,12 +75,10 @@ def for_encoding(text: str, encoding: str | None) -> str:
     str
         The text as it is, or in ASCII where it cannot be shown.
     """
-    try:
-        text.encode(encoding or "ascii")
-    except (UnicodeEncodeError, LookupError):
-        lines = "\n".join(_in_ascii(line) for line in text.split("\n"))
-        return lines.encode("ascii", "replace").decode()
-    return text
+    if can_show(text, encoding):
+        return text
+    lines = "\n".join(_in_ascii(line) for line in text.split("\n"))
+    return lines.encode("ascii", "replace").decode()
 
 
 def _in_ascii(line: str) -> str:

@@ -159,21 +159,11 @@ def test_feeds_without_a_line_say_so(stations):
     assert "matched and isolated" in said("feed", "-f", "5.3")
 
 
-@pytest.mark.xfail(
-    strict=True,
-    reason="answers.feed._band takes delay_length() for one element too: a quarter wave of cable "
-    "that nobody has",
-)
 def test_a_single_dipole_has_no_delayed_path(stations):
     words = ["feed", "-f", "5.3", "--station", stations["single dipole"], "--format", "json"]
     assert {row["line_deg"] for row in json.loads(said(*words))["band"]} == {None}
 
 
-@pytest.mark.xfail(
-    strict=True,
-    reason="FeedAnswer does not say whether the station may transmit (Station.can_transmit), so "
-    "the sheet of loops and of receive-only feeds speaks of sending and of changing over",
-)
 def test_the_sheet_of_an_antenna_for_receiving_does_not_speak_of_sending(stations):
     for name in ("loops", "receive only"):
         sheet = said("feed", "-f", "5.3", "--station", stations[name])
@@ -181,11 +171,6 @@ def test_the_sheet_of_an_antenna_for_receiving_does_not_speak_of_sending(station
         assert "change over to send" not in sheet
 
 
-@pytest.mark.xfail(
-    strict=True,
-    reason="answer_feed spreads its rows 4 % either side without the limits of --band: at 60 MHz "
-    "up to 62.4, which --band refuses",
-)
 def test_the_rows_by_themselves_keep_to_the_accepted_range():
     band = json.loads(said("feed", "-f", "60", "--format", "json"))["band"]
     assert max(row["frequency_mhz"] for row in band) <= 60.0
@@ -296,11 +281,6 @@ def test_a_day_without_a_wave_is_an_answer():
     assert "no wave to switch for" in text
 
 
-@pytest.mark.xfail(
-    strict=True,
-    reason="answer_day takes an ideal switch where relay_at gives None and says so nowhere: "
-    "_caveats looks for frequencies without any position, of which there are none",
-)
 def test_a_day_outside_the_impedance_table_says_that_an_ideal_switch_is_taken():
     text = plain(said("day", *DAY, "-f", "3", "--station", LARCH))
     assert "outside the shipped table" in text
@@ -325,11 +305,6 @@ def test_partners_come_from_a_file_and_from_the_line(tmp_path):
     assert [line.split()[0] for line in after(text, "| 5.300 MHz\n")[:2]] == ["Scree", "46.90,12.2"]
 
 
-@pytest.mark.xfail(
-    strict=True,
-    reason="answer_net does not look whether a partner stands twice, as it does where the file's "
-    "partner is named on the line again: every count then has it twice",
-)
 def test_a_partner_named_twice_counts_once(tmp_path):
     file = tmp_path / "one.csv"
     file.write_text('name,place\nScree Hut,"47.10,10.85"\n')
@@ -390,11 +365,6 @@ def test_every_text_fits_80_columns_and_has_an_ascii_form(stations):
         assert for_encoding(text, "utf-8") == text
 
 
-@pytest.mark.xfail(
-    strict=True,
-    reason="cli.writing.write puts JSON and CSV through for_encoding as well, so a terminal of "
-    "ASCII gets changed names; JSON has escapes for that",
-)
 def test_data_is_the_same_on_an_ascii_terminal(tmp_path):
     file = tmp_path / "hut.toml"
     text = LARCH.read_text(encoding="utf-8").replace("Larch Hut", "Lärchenhütte")
