@@ -27,6 +27,7 @@ from magion.answers.net import NetAnswer, answer_net
 from magion.answers.path import answer_path
 from magion.answers.pattern import AntennaAnswer, answer_antenna
 from magion.answers.point import FieldAnswer, WaveAnswer
+from magion.answers.relay import RelayAnswer, RelayPlan
 from magion.answers.sense import SenseAnswer, answer_station
 from magion.cli.arguments import INSTANT
 from magion.formats.partners import read_partners
@@ -119,6 +120,19 @@ ANTENNAS = {
         *["-f", "5.3", "--station", "<demo>", "--elevation", "0:10:10", "--azimuth", "20"],
     ],
 }
+LOGS = ["--station", "<demo>", "--partners", str(EXAMPLES / "net_alps.csv")]
+RELAYS = {
+    "swapped": [
+        *[str(EXAMPLES / "relay_swapped.csv"), *LOGS],
+        *["--readings", str(EXAMPLES / "relay_readings.csv")],
+    ],
+    "ambiguous": [str(EXAMPLES / "relay_ambiguous.csv"), *LOGS, "--flux", "120"],
+}
+TEST = ["--plan", *DEMO[:2], "-f", "5.3", "--time", "2026-12-21"]
+PLANS = {
+    "telling": [*TEST, "--readings", str(EXAMPLES / "relay_readings.csv"), "--station", "<demo>"],
+    "not telling": ["--plan", *DEMO[:2], "-f", "28", "--time", JUNE],
+}
 FIELDS = {
     "mid latitude": ["46.50,11.35", "--height", "100", "--date", "2026-06-21"],
     "southern": ["-34.0,151.0", "--date", "1955-01-01"],
@@ -142,6 +156,8 @@ ALL = {
     "station": STATIONS,
     "feed": FEEDS,
     "antenna": ANTENNAS,
+    "relay": RELAYS,
+    "relay-plan": PLANS,
     "field": FIELDS,
     "wave": WAVES,
 }
@@ -154,6 +170,8 @@ ROOTS = {
     "station": SenseAnswer,
     "feed": FeedAnswer,
     "antenna": AntennaAnswer,
+    "relay": RelayAnswer,
+    "relay-plan": RelayPlan,
     "field": FieldAnswer,
     "wave": WaveAnswer,
 }
@@ -181,7 +199,7 @@ def answer(tmp_path_factory, stations):
     @cache
     def ask(command, case, form="json"):
         words = [str(known.get(w, w)) for w in ALL[command][case]]
-        out = said(command, *words, "--format", form)
+        out = said(command.removesuffix("-plan"), *words, "--format", form)
         return json.loads(out, parse_constant=refuse) if form == "json" else out
 
     return lambda *case, **how: copy.deepcopy(ask(*case, **how))
@@ -547,7 +565,8 @@ def test_numbers_of_a_schema_carry_their_unit(command):
 @pytest.mark.parametrize("command", NUMBER)
 def test_page_of_formats_has_every_key_with_its_unit(command):
     text = FORMATS.read_text(encoding="utf-8")
-    section = text.split(f"## JSON of `magion {command}`")[1].split("\n## ")[0]
+    name = command.replace("-plan", " --plan")
+    section = text.split(f"## JSON of `magion {name}`")[1].split("\n## ")[0]
     rows = {}
     for line in section.splitlines():
         cells = [c.strip() for c in line.strip("|").split("|")]
