@@ -1,6 +1,6 @@
 PYTHON ?= python3
 
-.PHONY: check test bench
+.PHONY: check test bench accuracy
 
 check:
 	$(PYTHON) -m ruff check .
@@ -13,3 +13,6 @@ test:
 
 bench:
 	$(PYTHON) -m tests.benchmarks
+
+accuracy:
+	$(PYTHON) -m tests.accuracy --check

@@ -5,7 +5,7 @@ impedance at the far end of every cable, and the voltage that appears at the rad
 admittances of nodes (tee, one arm) or with the scattering matrix of a matched four-port (combiner,
 hybrid). The independent route of the effective lengths is the voltage itself: the field of a plane
 wave and of what the ground returns of it, by the continuity of tangential E and H, times the
-current, added up along the wire, or around a small square for a loop.
+current, added up along the wire, or around a small square for a loop. Kind: derived.
 """
 
 import math
@@ -43,7 +43,48 @@ from magion.geometry import source_axes
 from magion.ground import AVERAGE, CLASSES, PERFECT, Ground
 from magion.polarization import Hand, axial_ratio, ellipse, hand_of
 from magion.waves import polarization_vectors, wave_axes
+from tests.proof import proves
 from tests.stations import LEFT, RIGHT, WIRES, station, travelling
+
+RECEPTION = proves(
+    "currents of every network as weights on reception",
+    layer="feed",
+    kind="derived",
+    source="reciprocity; nodes and scattering matrix",
+    tolerance=1e-9,
+    unit="of the largest",
+)
+ENERGY = proves(
+    "shares of the power: reflected, dumped, fed, lost",
+    layer="feed",
+    kind="derived",
+    source="every watt is accounted for",
+    tolerance=1e-12,
+)
+WIRES_LENGTH = proves(
+    "effective length of wires over every ground",
+    layer="antenna",
+    kind="derived",
+    source="induced voltage by quadrature",
+    tolerance=1e-6,
+    unit="of the largest",
+)
+LOOPS_LENGTH = proves(
+    "effective length of loops over every ground",
+    layer="antenna",
+    kind="derived",
+    source="voltage around a small square",
+    tolerance=1e-5,
+    unit="of the largest",
+)
+FED = proves(
+    "power radiated over a perfect ground",
+    layer="antenna",
+    kind="derived",
+    source="integral over the half sphere",
+    tolerance=1e-6,
+    unit="relative",
+)
 
 F = 3.65e6
 OVERHEAD = 0.5 * math.pi
@@ -145,6 +186,7 @@ def test_currents_when_driven_are_weights_on_reception(position):
             volts = voltage_at_radio(feed, position, frequency[n], impedance[n], delay)
             weights = 0.5 * math.sqrt(feed.radio_impedance) * found.current[:, n]
             assert np.allclose(volts, weights, rtol=1e-9, atol=1e-15)
+            RECEPTION.off(np.abs(volts - weights) / np.abs(weights).max())
 
 
 @pytest.mark.parametrize("position", POSITIONS, ids=lambda p: p.label)
@@ -155,7 +197,7 @@ def test_every_watt_is_accounted_for(position, lossless):
     for feed, delay in feeds(14, 8, **fixed):
         found = solve(feed, ARMS, position, frequency, impedance, delay)
         shares = np.stack([found.reflected, found.dumped, found.fed, found.lost])
-        assert np.abs(shares.sum(axis=0) - 1.0).max() < 1e-12
+        ENERGY.within(shares.sum(axis=0), 1.0)
         assert shares.min() > -1e-12
         assert shares.max() < 1.0 + 1e-12
         assert np.allclose(found.fed, (np.abs(found.current) ** 2).sum(axis=0) * impedance.real)
@@ -266,7 +308,7 @@ def test_effective_length_of_wires_by_quadrature(ground):
         travel = travelling(azimuth, elevation)
         for value, axis in zip(found, source_axes(azimuth, elevation), strict=True):
             volts = induced(bearing, leg, height, apex, ground, frequency, axis + 0j, travel)
-            assert abs(value - volts) < 1e-6 * np.abs(found).max()
+            WIRES_LENGTH.off(abs(value - volts) / np.abs(found).max())
 
 
 @pytest.mark.parametrize("ground", GROUNDS, ids=str)
@@ -291,7 +333,7 @@ def test_effective_length_of_loops_by_going_around_them(ground):
                 along = field_along(points, axis + 0j, travel, ground, frequency) @ way
                 volts += half * np.sum(WEIGHTS * along)
             area = (2.0 * half) ** 2
-            assert abs(value - volts / area) < 1e-5 * np.abs(found).max()
+            LOOPS_LENGTH.off(abs(value - volts / area) / np.abs(found).max())
 
 
 @pytest.mark.parametrize("apex_deg", [180.0, 120.0])
@@ -570,7 +612,7 @@ def test_realized_gain_never_exceeds_the_power_that_is_fed():
     stated = station(F, leg=0.25, height=0.2, resistance=resistance)
     for position in POSITIONS:
         network = network_of(stated, position, F)
-        assert mean(joined(network.current, lengths)) == pytest.approx(network.fed[0], rel=1e-6)
+        FED.within(mean(joined(network.current, lengths)), network.fed[0])
 
 
 @pytest.mark.parametrize("ground", [*CLASSES.values()], ids=CLASSES)

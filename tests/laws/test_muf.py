@@ -36,6 +36,33 @@ from magion.rays.link import link_between
 from magion.rays.muf import F_REGION, maximum_usable_frequencies
 from magion.waves import MODES
 from tests.media import AxialDipole
+from tests.proof import proves
+
+VERTICAL = proves(
+    "MUFs straight up",
+    layer="rays",
+    kind="published",
+    source="IEC 60050-705, 705-07-40",
+    tolerance=10e3,
+    unit="Hz",
+    scale=1e6,
+)
+SEPARATION = proves(
+    "separation of both MUFs, 300 to 3000 km",
+    layer="rays",
+    kind="derived",
+    source="printed values of other layers",
+    tolerance=0.10,
+    unit="MHz",
+)
+BESIDE_E = proves(
+    "MUF of F where E has a higher one",
+    layer="rays",
+    kind="derived",
+    source="a dense fan",
+    tolerance=3e-3,
+    unit="relative",
+)
 
 LAYERS = LayerParameters(
     fof2=7e6,
@@ -120,7 +147,7 @@ def test_vertical_mufs_are_the_critical_frequencies(latitude, fof2):
     f_h = gyrofrequency_at(link, 280e3)
     fxf2 = 0.5 * f_h + np.sqrt(fof2**2 + 0.25 * f_h**2)
     found = path_mufs(scene(link, [layers]), (1,)).any_layer[:, 0]
-    assert np.abs(found - [fof2, fxf2]).max() < 10e3
+    VERTICAL.within(found, [fof2, fxf2])
 
 
 def test_vertical_mufs_in_an_ionosphere_along_a_path():
@@ -140,7 +167,7 @@ def test_vertical_mufs_in_an_ionosphere_along_a_path():
     fxf2 = 0.5 * f_h + np.sqrt(49e12 + 0.25 * f_h**2)
     medium = path_ionosphere(stations, [whole])
     found = path_mufs(scene(link, [LAYERS], medium), (1,)).f_region[:, 0]
-    assert np.abs(found - [7e6, fxf2]).max() < 10e3
+    VERTICAL.within(found, [7e6, fxf2])
 
 
 def test_separation_is_largest_north_south():
@@ -152,13 +179,13 @@ def test_separation_is_largest_north_south():
     # The printed values belong to other layers and another field. They move with f_H (1.21 to
     # 1.25 MHz, 3 %) and with foF2 (5 to 10 MHz, 0.07 MHz at 300 km, 0.03 beyond); and a MUF is
     # good to 0.2 % here, 0.04 MHz at 3000 km, on either wave.
-    assert np.abs(north - [0.72, 0.51, 0.49]).max() < 0.06
-    assert np.abs(east - [0.62, 0.27, 0.15]).max() < 0.10
+    SEPARATION.within(north, [0.72, 0.51, 0.49], 0.06)
+    SEPARATION.within(east, [0.62, 0.27, 0.15])
 
 
 def test_separation_grows_north_south_near_the_dip_equator():
     north = np.array([np.diff(mufs(19.0, 0.0, d))[0] for d in (300, 1000, 3000)]) / 1e6
-    assert np.abs(north - [0.64, 0.73, 0.76]).max() < 0.06
+    SEPARATION.within(north, [0.64, 0.73, 0.76], 0.06)
 
 
 SKIP_BETWEEN_RAYS = (
@@ -253,7 +280,7 @@ def test_muf_of_f_is_found_where_e_has_a_higher_one():
     link = path(67.0, 0.0, 600)
     found = path_mufs(scene(link, [layers]), (1,)).f_region[:, 0]
     # a dense fan: 6.025 and 6.671 MHz
-    assert np.allclose(found, [6.025e6, 6.671e6], rtol=3e-3, atol=0.0)
+    BESIDE_E.within(found, [6.025e6, 6.671e6])
 
 
 def mufs_of_many(distance, azimuth, shares):

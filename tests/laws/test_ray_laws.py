@@ -28,6 +28,42 @@ from magion.rays.homing import LARGEST_MISS, home
 from magion.rays.link import link_between
 from magion.waves import MODES, refractive_index_squared
 from tests.media import AxialDipole, Scaled
+from tests.proof import proves
+
+HAMILTONIAN = proves(
+    "Hamiltonian along every ray",
+    layer="rays",
+    kind="derived",
+    source="it stays zero",
+    tolerance=1e-6,
+)
+REVERSAL = proves(
+    "landing place with the field reversed",
+    layer="rays",
+    kind="derived",
+    source="reversing the field changes no ray",
+    tolerance=5.0,
+    unit="m",
+    scale=1e6,
+)
+MIRROR = proves(
+    "landing place in the mirrored hemisphere",
+    layer="rays",
+    kind="derived",
+    source="a mirror of field and path mirrors the rays",
+    tolerance=5.0,
+    unit="m",
+    scale=1e6,
+)
+SOLVER = proves(
+    "landing place by a general ODE solver",
+    layer="rays",
+    kind="derived",
+    source="Hamilton's equations, numerical derivatives",
+    tolerance=50.0,
+    unit="m",
+    scale=1e6,
+)
 
 LAYERS = LayerParameters(
     fof2=7e6,
@@ -78,7 +114,7 @@ def test_hamiltonian_stays_zero_along_every_ray(extraordinary):
     for i, track in enumerate(ends.landings[0].tracks):
         same = batch.hop(0, np.full(track.group_path.size, i))
         _, energy = derivative_and_hamiltonian(track.state, same, MEDIUM, DIPOLE)
-        assert np.abs(energy).max() <= 1e-6
+        HAMILTONIAN.off(np.abs(energy))
 
 
 def test_both_waves_coincide_as_the_field_vanishes():
@@ -105,8 +141,8 @@ def test_reversing_the_field_changes_no_ray(extraordinary):
     batch = rays(np.full(12, 5.3), extraordinary)
     there = shoot(link, w, batch, MEDIUM, DIPOLE, tolerance=TIGHT).position
     reversed_field = AxialDipole(sign=-1.0)
-    assert norm(there - shoot(link, w, batch, MEDIUM, reversed_field, tolerance=TIGHT).position
-                ).max() < 5.0  # fmt: skip
+    back = shoot(link, w, batch, MEDIUM, reversed_field, tolerance=TIGHT).position
+    REVERSAL.off(norm(there - back))
 
 
 @pytest.mark.parametrize("extraordinary", [False, True])
@@ -120,7 +156,7 @@ def test_mirror_across_the_equator_mirrors_the_rays(extraordinary):
     above = shoot(north_link, w, batch, MEDIUM, DIPOLE, tolerance=TIGHT).position
     below = shoot(south_link, mirrored, batch, MEDIUM, DIPOLE, tolerance=TIGHT).position
     flip = np.array([[1.0], [1.0], [-1.0]])
-    assert norm(above - flip * below).max() < 5.0
+    MIRROR.off(norm(above - flip * below))
 
 
 def test_a_ray_runs_back_the_way_it_came():
@@ -261,4 +297,4 @@ def test_general_solver_lands_at_the_same_place(extraordinary, psi_deg):
     along = ground @ direction
     length = -along + np.sqrt(along**2 - EARTH_RADIUS**2 + (EARTH_RADIUS + MEDIUM.base) ** 2)
     landed = _one_ray(ground + direction * length, direction, 5.3e6, extraordinary)
-    assert np.linalg.norm(landed - ends.position[:, 0]) < 50.0
+    SOLVER.off(np.linalg.norm(landed - ends.position[:, 0]))

@@ -180,8 +180,9 @@ def _instant(jobs, sky):
     """An engine that answers at once, to weigh what lies around it."""
     for job in jobs:
         found = Found(
-            distance_km=0.0, state="none", probability=None, wave=None, receive_hand=None, transmit_hand=None,
-            level_db=(None, None), muf_mhz=(None, None), margin_mhz=None, here=None,
+            distance_km=0.0, state="none", probability=None, wave=None, receive_hand=None,
+            transmit_hand=None, level_db=(None, None), muf_mhz=(None, None), margin_mhz=None,
+            here=None,
         )  # fmt: skip
         yield tuple(found for _ in job.queries)
 

@@ -4,7 +4,7 @@ The independent route of the waves starts from the equation of motion of one
 electron, m dv/dt = −e (E + v × B) − m ν v, with exp(+iωt): its mobility gives
 the dielectric tensor, and the tensor the wave equation, whose two transverse
 eigenvectors are the waves. Neither the indices nor the hands go through the
-formulas under test.
+formulas under test (kind: derived).
 """
 
 import numpy as np
@@ -36,6 +36,31 @@ from magion.waves import (
     refractive_index,
     refractive_index_squared,
     wave_axes,
+)
+from tests.proof import proves
+
+ROOTS = proves(
+    "squared indices by the dielectric tensor",
+    layer="waves",
+    kind="derived",
+    source="motion of one electron",
+    tolerance=1e-10,
+    unit="relative to 1 + |n²|",
+)
+QUARTIC = proves(
+    "sum and product of the squared indices by the quartic",
+    layer="waves",
+    kind="derived",
+    source="S, D, P elements",
+    tolerance=1e-9,
+    unit="relative to 1 + |n²|",
+)
+VECTORS = proves(
+    "states of both waves by the dielectric tensor",
+    layer="polarization",
+    kind="derived",
+    source="eigenvectors of the tensor",
+    tolerance=1e-12,
 )
 
 NUMBER = 4000
@@ -96,7 +121,7 @@ def test_indices_are_the_roots_of_the_tensor(collisions):
     assert state[0].size > 0.9 * NUMBER
     for ours, (theirs, _) in zip(refractive_index_squared(*state), paired(*state), strict=True):
         # The elimination of E_z costs up to 1/ε_zz in rounding.
-        assert np.max(np.abs(ours - theirs) / (1 + np.abs(theirs))) < 1e-10
+        ROOTS.off(np.abs(ours - theirs) / (1 + np.abs(theirs)))
 
 
 def test_indices_are_the_roots_of_the_quartic():
@@ -111,8 +136,8 @@ def test_indices_are_the_roots_of_the_quartic():
     B = R * L * sin2 + P * S * (1 + cos2)
     C = P * R * L
     ordinary, extraordinary = refractive_index_squared(X, Y, Z, theta)
-    assert np.max(np.abs(ordinary + extraordinary - B / A) / (1 + np.abs(B / A))) < 1e-9
-    assert np.max(np.abs(ordinary * extraordinary - C / A) / (1 + np.abs(C / A))) < 1e-9
+    QUARTIC.off(np.abs(ordinary + extraordinary - B / A) / (1 + np.abs(B / A)))
+    QUARTIC.off(np.abs(ordinary * extraordinary - C / A) / (1 + np.abs(C / A)))
 
 
 @pytest.mark.parametrize("collisions", [False, True])
@@ -122,7 +147,7 @@ def test_polarizations_are_the_eigenvectors_of_the_tensor(collisions):
     distinct = np.abs(squares[0] - squares[1]) > 1e-4  # else the eigenvectors are not defined
     assert distinct.sum() > 0.8 * NUMBER
     for ours, (_, theirs) in zip(polarization_vectors(*state), paired(*state), strict=True):
-        assert np.abs(match(ours, theirs) - 1)[distinct].max() < 1e-12
+        VECTORS.within(match(ours, theirs)[distinct], 1.0)
         clear = distinct & (np.abs(stokes(ours)[3]) > 1e-6)
         assert np.array_equal(is_right_hand(ours)[clear], turns_right(theirs)[clear])
         assert clear.sum() > 0.75 * NUMBER

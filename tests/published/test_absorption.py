@@ -33,14 +33,56 @@ from magion.rays.batch import trace
 from magion.rays.losses import absorption
 from magion.waves import collision_ratio, plasma_ratio, refractive_index
 from tests.media import QuasiParabolic
+from tests.proof import proves
 from tests.published.test_quasi_parabolic import GROUND, QUASI, TIGHT, rays_without_field
+
+IONS = proves(
+    "electron-ion collision frequency",
+    layer="ionosphere",
+    kind="memory",
+    source="Kelley 1989",
+    tolerance=0.5,
+    unit="s⁻¹",
+    scale=1000.0,
+)
+D_REGION = proves(
+    "electron density of the daytime D region, 60 to 100 km",
+    layer="ionosphere",
+    kind="published",
+    source="FIRI-2018",
+    tolerance=0.45,
+    unit="relative",
+)
+SLAB = proves(
+    "absorption of both waves in a slab",
+    layer="absorption",
+    kind="derived",
+    source="Hunsucker 1991, eq. 2.53",
+    tolerance=1e-4,
+    unit="dB",
+)
+BOTH = proves(
+    "ratio of the absorptions of both waves",
+    layer="absorption",
+    kind="derived",
+    source="Hunsucker 1991, eq. 2.53",
+    tolerance=5e-4,
+)
+CONSTANT_NU = proves(
+    "absorption along whole rays, constant collision frequency",
+    layer="absorption",
+    kind="published",
+    source="Dyson and Bennett 1980",
+    tolerance=1e-3,
+    unit="relative",
+)
 
 NEPER_DB = 8.685889638
 
 
 @pytest.mark.parametrize(("per_cm3", "kelvin", "nu"), [(1e6, 1500, 1170), (1e5, 1000, 229)])
 def test_electron_ion_collisions(per_cm3, kelvin, nu):
-    assert abs(electron_ion(per_cm3 * 1e6, kelvin) - nu) < 0.5  # half the last printed digit
+    IONS.within(electron_ion(per_cm3 * 1e6, kelvin), nu)  # half the last printed digit
 
 
 def test_no_plasma_no_ions():
@@ -54,7 +96,7 @@ def test_daytime_d_region_against_the_published_model():
     height = np.array([60e3, 70e3, 80e3, 90e3, 100e3])
     published = np.array([1.9e7, 2.0e8, 1.0e9, 7.7e9, 6.2e10])
     ratio = d_region(height, *d_region_of_sun(np.radians(50.0))) / published
-    assert np.abs(np.log(ratio)).max() < np.log(1.45)
+    D_REGION.off(np.exp(np.abs(np.log(ratio))) - 1.0)
     assert abs(np.log(ratio).mean()) < np.log(1.1)
 
 
@@ -69,7 +111,7 @@ def test_non_deviative_absorption_of_a_slab():
     for value, sign, printed in zip(found, (1.0, -1.0), (0.2966, 1.1480), strict=True):
         shift = 0.5 * X / (1.0 + sign * along / frequency)
         assert value == pytest.approx(printed, rel=1.5e-3)
-        assert value * (1.0 - shift) == pytest.approx(printed, abs=1e-4)
+        SLAB.within(value * (1.0 - shift), printed)
 
 
 @pytest.mark.parametrize(
@@ -78,7 +120,7 @@ def test_non_deviative_absorption_of_a_slab():
 def test_ratio_of_both_waves(mhz, ratio):
     # X = 1e-6 and Z = 1e-4 shift it by parts in 1e6, far below half the last printed digit
     ordinary, extraordinary = refractive_index(1e-6, 1.2 / mhz, 1e-4, 0.0)
-    assert abs(extraordinary.imag / ordinary.imag - ratio) < 5e-4
+    BOTH.within(extraordinary.imag / ordinary.imag, ratio)
 
 
 def test_absorption_of_quasi_parabolic_rays():
@@ -100,7 +142,7 @@ def test_absorption_of_quasi_parabolic_rays():
     expected = NEPER_DB * nu / (2.0 * SPEED_OF_LIGHT) * (rows[:, 3] - rows[:, 4]) * 1e3
     # Z² is below 1e-9 and the paths are printed to 2e-5 of their difference; the rest is the
     # integration in steps of 1 km.
-    assert np.allclose(found, expected, rtol=1e-3, atol=0.0)
+    CONSTANT_NU.within(found, expected)
     assert found[2] == pytest.approx(0.148, rel=0.01)
 
 

@@ -36,7 +36,71 @@ from magion.constants import SPEED_OF_LIGHT
 from magion.geometry import source_axes
 from magion.ground import PERFECT
 from magion.polarization import Hand, axial_ratio_db
+from tests.proof import proves
 from tests.stations import LEFT, RIGHT, WIRES, station, travelling
+
+DIRECTIVITY = proves(
+    "directivity of the half-wave dipole",
+    layer="antenna",
+    kind="practice",
+    source="Kraus and Marhefka 2002",
+    tolerance=0.5e-5,
+)
+RADIATION = proves(
+    "radiation resistance of the half-wave dipole",
+    layer="antenna",
+    kind="practice",
+    source="Kraus and Marhefka 2002",
+    tolerance=0.05,
+    unit="ohm",
+)
+HALF_POWER = proves(
+    "loss of a circular wave on one wire",
+    layer="antenna",
+    kind="practice",
+    source="Kraus and Marhefka 2002",
+    tolerance=0.5e-4,
+    unit="dB",
+)
+CURRENT = proves(
+    "pattern of a wire of any length in free space",
+    layer="antenna",
+    kind="practice",
+    source="Kraus and Marhefka 2002",
+    tolerance=1e-9,
+    unit="relative",
+)
+LOOP = proves(
+    "pattern of a small loop",
+    layer="antenna",
+    kind="practice",
+    source="Kraus and Marhefka 2002",
+    tolerance=1e-12,
+)
+IMAGE = proves(
+    "dipole over a perfect ground, overhead",
+    layer="antenna",
+    kind="derived",
+    source="image theory",
+    tolerance=0.005,
+    unit="dB",
+)
+CROSSED = proves(
+    "axial ratio and rejection of short crossed wires, every elevation",
+    layer="antenna",
+    kind="derived",
+    source="image theory",
+    tolerance=0.05,
+    unit="dB",
+)
+HALF_WAVES = proves(
+    "axial ratio of crossed wires at 45 and 30 degrees",
+    layer="antenna",
+    kind="derived",
+    source="image theory",
+    tolerance=0.05,
+    unit="dB",
+)
 
 F = SPEED_OF_LIGHT  # a wavelength of one metre
 K = 2.0 * math.pi
@@ -63,14 +127,14 @@ def over_the_sphere(leg):
 
 def test_directivity_of_a_half_wave_dipole():
     directivity = size(wire(0.5 * math.pi, 0.0)) ** 2 / over_the_sphere(0.25)
-    assert abs(directivity - 1.64092) < HALF_PRINTED * 1e-5
+    DIRECTIVITY.within(directivity, 1.64092)
     assert abs(10.0 * np.log10(directivity) - 2.1509) < HALF_PRINTED * 1e-4
 
 
 def test_radiation_resistance_of_a_half_wave_dipole():
     # Power of 1 A: the field k eta |l| / (4 pi r), its density over eta, times the sphere.
     resistance = ETA * K**2 / (4.0 * math.pi) * over_the_sphere(0.25)
-    assert abs(resistance - 73.1) < HALF_PRINTED * 0.1
+    RADIATION.within(resistance, 73.1)
 
 
 def test_a_matched_half_wave_dipole_has_that_gain():
@@ -90,7 +154,7 @@ def test_a_circular_wave_on_a_linear_antenna():
     full = gain(length, np.array([1.0 + 0j, 0.0]), F)
     for hand in Hand:
         lost = decibels(gain(length, circular(hand), F) / full)
-        assert abs(lost + 3.0103) < HALF_PRINTED * 1e-4
+        HALF_POWER.within(lost, -3.0103)
         assert abs(lost / 6.0 + 0.5) < 0.002  # half an S-unit
 
 
@@ -101,7 +165,7 @@ def test_pattern_of_a_current_that_is_zero_at_the_ends(leg):
     found = wire(azimuth, 0.0, leg=leg)
     cos, sin = np.cos(azimuth), np.sin(azimuth)
     textbook = 2.0 * (np.cos(K * leg * cos) - np.cos(K * leg)) / (K * math.sin(K * leg) * sin)
-    assert np.allclose(np.abs(found[0]), textbook, rtol=1e-9, atol=0.0)
+    CURRENT.within(np.abs(found[0]), textbook)
     assert np.abs(found[1]).max() < 1e-15
     # What a current that reaches the ends at full strength would have
     uniform = 2.0 * leg * np.sinc(2.0 * leg * cos) * sin
@@ -126,7 +190,7 @@ def test_sign_of_the_hot_leg():
 def test_overhead_of_a_horizontal_dipole_over_a_perfect_ground(height, printed):
     over = wire(0.0, OVERHEAD, height=height, ground=PERFECT)
     factor = size(over) / size(wire(0.0, OVERHEAD))
-    assert abs(20.0 * np.log10(factor) - printed) < HALF_PRINTED * 0.01
+    IMAGE.within(20.0 * np.log10(factor), printed)
     assert abs(factor - 2.0 * math.sin(K * height)) < 1e-6
 
 
@@ -151,12 +215,12 @@ def test_short_crossed_elements_at_every_elevation(azimuth_deg, position):
     elevation = np.radians(np.arange(1.0, 90.0))
     s = np.sin(elevation)
     total, f = crossed(0.002, math.radians(azimuth_deg), elevation, position)
-    assert np.abs(axial_ratio_db(total) - 20.0 * np.log10(1.0 / s)).max() < 0.05
+    CROSSED.within(axial_ratio_db(total), 20.0 * np.log10(1.0 / s))
     right, left = hand_gains(total, f)
     wanted, other = (left, right) if position is LEFT else (right, left)
     kept = s < 0.998  # beyond, 60 dB and more
     law = 20.0 * np.log10((1.0 + s) / (1.0 - s))
-    assert np.abs(decibels(wanted / other) - law)[kept].max() < 0.05
+    CROSSED.within(decibels(wanted / other)[kept], law[kept])
 
 
 @pytest.mark.parametrize(
@@ -172,7 +236,7 @@ def test_short_crossed_elements_at_every_elevation(azimuth_deg, position):
 )
 def test_axial_ratios_of_crossed_elements(leg, azimuth_deg, elevation_deg, printed, precision):
     total, _ = crossed(leg, math.radians(azimuth_deg), math.radians(elevation_deg))
-    assert abs(axial_ratio_db(total)[0] - printed) < HALF_PRINTED * precision
+    HALF_WAVES.within(axial_ratio_db(total)[0], printed, HALF_PRINTED * precision)
 
 
 @pytest.mark.parametrize("azimuth_deg", [45.0, 135.0, 225.0, 315.0])
@@ -229,7 +293,7 @@ def test_pattern_of_a_small_loop(bearing_deg):
     assert np.allclose(size(found), K * np.linalg.norm(across, axis=1), rtol=1e-12)
     h, v = source_axes(a, e)
     vector = (found[0] * h + found[1] * v).T
-    assert np.abs(np.cross(vector, across)).max() < 1e-12
+    LOOP.off(np.abs(np.cross(vector, across)))
 
 
 def test_a_vertical_loop_over_a_perfect_ground():

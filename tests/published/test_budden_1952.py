@@ -16,6 +16,15 @@ import pytest
 
 from magion.polarization import axial_ratio, tilt
 from magion.waves import limiting_shape, polarization_vectors
+from tests.proof import proves
+
+LIMITING = proves(
+    "limiting shape of a vertical wave",
+    layer="polarization",
+    kind="derived",
+    source="Budden 1952; Ratcliffe 1959",
+    tolerance=1e-4,
+)
 
 ROWS = [
     (3.65, 1.25, 67, 0.9720),
@@ -32,10 +41,10 @@ ROWS = [
 @pytest.mark.parametrize(("f", "f_h", "dip_deg", "ratio"), ROWS)
 def test_minor_over_major_axis_of_a_vertical_wave(f, f_h, dip_deg, ratio):
     theta = np.radians(90 - dip_deg)
-    assert abs(limiting_shape(f_h / f, theta) - ratio) < 1e-4
+    LIMITING.within(limiting_shape(f_h / f, theta), ratio)
     # The same from the waves themselves in a trace of plasma.
     for vector in polarization_vectors(1e-9, f_h / f, 0.0, theta):
-        assert abs(1 / axial_ratio(vector) - ratio) < 1e-4
+        LIMITING.within(1 / axial_ratio(vector), ratio)
 
 
 @pytest.mark.parametrize(("f", "f_h", "dip_deg", "ratio"), ROWS)

@@ -17,6 +17,15 @@ import pytest
 from scipy.integrate import quad
 
 from magion.ionosphere.layers import chapman
+from tests.proof import proves
+
+LAYER = proves(
+    "Chapman layer from its assumptions",
+    layer="ionosphere",
+    kind="derived",
+    source="Chapman 1931, by quadrature",
+    tolerance=1e-6,
+)
 
 
 def production(z, zenith):
@@ -34,7 +43,7 @@ def test_layer_from_its_assumptions(zenith_deg):
     for z in (-1.5, -0.5, 0.0, 0.7, 2.0, 5.0):
         expected = np.sqrt(production(z, zenith) / overhead_peak)
         found = float(chapman(np.array([peak + z * scale]), peak, scale, zenith)[0])
-        assert abs(found - expected) < 1e-6
+        LAYER.within(found, expected)
 
 
 @pytest.mark.parametrize("zenith_deg", [0.0, 45.0, 75.0])

@@ -20,6 +20,31 @@ from magion.waves import (
     polarization_vectors,
     refractive_index_squared,
 )
+from tests.proof import proves
+
+VALUES = proves(
+    "critical collision frequency",
+    layer="waves",
+    kind="memory",
+    source="Booker 1934; Ratcliffe 1959",
+    tolerance=0.01,
+    unit="relative",
+)
+MEETING = proves(
+    "difference of both squared indices at the critical collision frequency",
+    layer="waves",
+    kind="derived",
+    source="Booker 1934",
+    tolerance=1e-6,
+)
+STRAIGHT = proves(
+    "tilt of both straight waves at X = 1",
+    layer="polarization",
+    kind="derived",
+    source="Booker 1934",
+    tolerance=0.1,
+    unit="deg",
+)
 
 
 @pytest.mark.parametrize(
@@ -27,7 +52,7 @@ from magion.waves import (
 )
 def test_values_for_vertical_waves(dip_deg, nu_c):
     theta = np.radians(90 - dip_deg)
-    assert abs(critical_collision_frequency(1.3e6, theta) / nu_c - 1) < 0.01
+    VALUES.within(critical_collision_frequency(1.3e6, theta), nu_c)
 
 
 @pytest.mark.parametrize("Y", [0.2, 0.5, 0.9])
@@ -41,7 +66,7 @@ def test_indices_coincide(Y, theta_deg):
     at_it = refractive_index_squared(1.0, Y, Z, theta)
     below = refractive_index_squared(1.0, Y, 0.9 * Z, theta)
     # A double root: an error of one unit in the last place splits it by its square root.
-    assert abs(at_it[0] - at_it[1]) < 1e-6
+    MEETING.within(at_it[0], at_it[1])
     assert abs(below[0] - below[1]) > 1e-2
 
 
@@ -55,8 +80,8 @@ def test_both_waves_are_straight_below_it(share, theta_deg):
     ordinary, extraordinary = polarization_vectors(1.0, Y, Z, theta)
     assert axial_ratio(ordinary) > 1e6
     assert axial_ratio(extraordinary) > 1e6
-    assert abs(np.degrees(tilt(ordinary)) - psi_deg) < 0.1
-    assert abs(np.degrees(tilt(extraordinary)) - (90 - psi_deg)) < 0.1
+    found = np.degrees([tilt(ordinary), tilt(extraordinary)])
+    STRAIGHT.within(found, [psi_deg, 90 - psi_deg])
 
 
 @pytest.mark.parametrize("share", [1.2, 3.0])

@@ -30,7 +30,32 @@ from magion.antenna.response import (
     network_of,
 )
 from magion.polarization import LINEAR_LIMIT_DB, ellipse
+from tests.proof import proves
 from tests.stations import LEFT, RIGHT, WIRES, station
+
+FADE = proves(
+    "fade depth of two beating waves",
+    layer="antenna",
+    kind="derived",
+    source="20 log10((1 + r)/(1 − r))",
+    tolerance=0.05,
+    unit="dB",
+)
+LIMIT = proves(
+    "axial ratio beyond which one wire takes more than a circular antenna",
+    layer="polarization",
+    kind="derived",
+    source="1 + sqrt 2",
+    tolerance=0.005,
+    unit="dB",
+)
+SHARE = proves(
+    "share of an ellipse that a circular antenna and a wire take",
+    layer="antenna",
+    kind="derived",
+    source="closed forms",
+    tolerance=1e-9,
+)
 
 F = 3.65e6
 OVERHEAD = 0.5 * math.pi
@@ -38,7 +63,7 @@ OVERHEAD = 0.5 * math.pi
 
 @pytest.mark.parametrize(("level_db", "printed"), [(-1.0, 24.8), (-3.0, 15.3), (-6.0, 9.6)])
 def test_fade_depth_of_two_beating_waves(level_db, printed):
-    assert abs(fade_depth_db(level_db) - printed) < 0.05  # half the last printed digit
+    FADE.within(fade_depth_db(level_db), printed)  # half the last printed digit
     assert fade_depth_db(-level_db) == fade_depth_db(level_db)
 
 
@@ -74,12 +99,12 @@ def test_a_wire_beats_circular_beyond_an_axial_ratio_of_2_414(ratio, tilt, wire)
     assert (single > circular) is (20.0 * math.log10(ratio) > LINEAR_LIMIT_DB)
     # Shares of the power that the matched antenna would take, in closed form
     whole = taken(LEFT, 1.0, 0.0)
-    assert abs(circular / whole - (1.0 + ratio) ** 2 / (2.0 * (1.0 + ratio**2))) < 1e-9
-    assert abs(single / whole - ratio**2 / (1.0 + ratio**2)) < 1e-9
+    SHARE.within(circular / whole, (1.0 + ratio) ** 2 / (2.0 * (1.0 + ratio**2)))
+    SHARE.within(single / whole, ratio**2 / (1.0 + ratio**2))
 
 
 def test_the_limit_between_wire_and_circular():
-    assert abs(LINEAR_LIMIT_DB - 7.66) < 0.005  # half the last printed digit
+    LIMIT.within(LINEAR_LIMIT_DB, 7.66)  # half the last printed digit
     limit = 10.0 ** (LINEAR_LIMIT_DB / 20.0)
     assert abs(limit - 2.414) < 5e-4
     difference = decibels(taken(WIRES[1], limit, 0.0)) - decibels(taken(LEFT, limit, 0.0))

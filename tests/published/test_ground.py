@@ -24,6 +24,38 @@ from magion.ground import AVERAGE, Ground, reflection
 from magion.polarization import hand_of
 from magion.rays.exit import PlasmaPoint
 from magion.waves import MODES, Mode
+from tests.proof import proves
+
+MODULI = proves(
+    "reflection coefficients of four grounds",
+    layer="rays",
+    kind="derived",
+    source="Fresnel; constants of ITU-R P.527",
+    tolerance=5e-4,
+)
+HANDS = proves(
+    "kept over flipped hand of a bounce",
+    layer="rays",
+    kind="derived",
+    source="Fresnel",
+    tolerance=0.05,
+    unit="dB",
+)
+SHARES = proves(
+    "shares of both waves after a bounce",
+    layer="rays",
+    kind="derived",
+    source="Fresnel",
+    tolerance=0.15,
+    unit="dB",
+)
+BOUNDARY = proves(
+    "shares of both waves after a bounce, by boundary conditions",
+    layer="rays",
+    kind="derived",
+    source="continuity of tangential E and H",
+    tolerance=1e-9,
+)
 
 UP, EAST, NORTH = np.eye(3)
 PLACE = EARTH_RADIUS * UP
@@ -41,8 +73,8 @@ PLACE = EARTH_RADIUS * UP
 def test_moduli_of_the_coefficients(permittivity, conductivity, horizontal, vertical):
     ground = Ground(permittivity=permittivity, conductivity=conductivity)
     r_h, r_v = reflection(ground, 7e6, np.radians(30.0))
-    assert abs(abs(r_h) - horizontal) < 5e-4  # half the last printed digit
-    assert abs(abs(r_v) - vertical) < 5e-4
+    # half the last printed digit
+    MODULI.within([abs(r_h), abs(r_v)], [horizontal, vertical])
 
 
 def test_perfect_conductor():
@@ -72,7 +104,7 @@ def kept_and_flipped(elevation_deg, ground=AVERAGE, frequency=7e6):
 
 def test_low_elevation_keeps_the_hand():
     kept, flipped = kept_and_flipped(5.0)
-    assert abs(20.0 * np.log10(kept / flipped) - 8.7) < 0.05
+    HANDS.within(20.0 * np.log10(kept / flipped), 8.7)
     # which is which: at the vertical, over a conductor, the IEEE hand flips
     kept, flipped = kept_and_flipped(90.0, Ground(permittivity=1.0, conductivity=1e12))
     assert flipped == pytest.approx(1.0, abs=1e-4)
@@ -114,8 +146,7 @@ def test_shares_at_dip_67_northward():
     to_o, to_x = 10.0 * np.log10(table[0])
     # The source leaves f_H open: 1.25 MHz gives −18.64 and −4.32 dB, 1.1 and 1.4 MHz −18.55 and
     # −18.53, −4.29 and −4.36 dB. 0.15 dB holds that and half the last digit.
-    assert abs(to_o + 18.5) < 0.15
-    assert abs(to_x + 4.3) < 0.15
+    SHARES.within([to_o, to_x], [-18.5, -4.3])
 
 
 def test_southward_is_northward_read_backward():
@@ -189,6 +220,7 @@ def test_bounce_against_the_boundary_conditions(heading, elevation_deg):
         [by_field_vectors(before, after, m, n, down, 7.1e6, AVERAGE) for n in MODES] for m in MODES
     ]
     assert np.allclose(table, again, rtol=1e-9, atol=1e-12)
+    BOUNDARY.within(table, again)
 
 
 def test_bounce_at_the_vertical():

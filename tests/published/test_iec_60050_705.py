@@ -22,6 +22,31 @@ from magion.waves import (
     refractive_index_squared,
     wave_axes,
 )
+from tests.proof import proves
+
+ZEROS = proves(
+    "zeros of both indices",
+    layer="waves",
+    kind="published",
+    source="IEC 60050-705, 705-07-40",
+    tolerance=1e-6,
+)
+CRITICAL = proves(
+    "critical frequency of the extraordinary wave",
+    layer="waves",
+    kind="derived",
+    source="IEC 60050-705, 705-07-40",
+    tolerance=5e-5,
+    unit="MHz",
+)
+WINDOW = proves(
+    "width of the window of the extraordinary wave alone",
+    layer="waves",
+    kind="derived",
+    source="IEC 60050-705, 705-07-40",
+    tolerance=0.005,
+    unit="MHz",
+)
 
 EAST, NORTH, UP = np.eye(3)
 
@@ -31,10 +56,10 @@ EAST, NORTH, UP = np.eye(3)
 def test_zeros_of_both_indices(Y, theta_deg):
     theta = np.radians(theta_deg)
     ordinary, _ = refractive_index_squared(1.0, Y, 0.0, theta)
-    assert abs(ordinary) < 1e-6
+    ZEROS.within(ordinary, 0.0)
     for X in (1.0 - Y, 1.0 + Y):
         _, extraordinary = refractive_index_squared(X, Y, 0.0, theta)
-        assert abs(extraordinary) < 1e-6
+        ZEROS.within(extraordinary, 0.0)
 
 
 @pytest.mark.parametrize("X", [1e-6, 0.2, 0.7])
@@ -73,7 +98,7 @@ def test_overhead_at_the_dip_equator(vertical):
 )
 def test_critical_frequency_of_the_extraordinary_wave(f_o, f_h, f_x):
     found = float(extraordinary_critical_frequency(f_o, f_h))
-    assert abs(found - f_x) < 5e-5  # half the last printed digit
+    CRITICAL.within(found, f_x)  # half the last printed digit
     # The zero at X = 1 - Y that the figure stands for, at any angle to the field.
     _, square = refractive_index_squared((f_o / found) ** 2, f_h / found, 0.0, 0.7)
     assert abs(square) < 1e-6
@@ -87,4 +112,6 @@ def test_window_of_the_extraordinary_wave_alone(f, width):
     lowest = np.sqrt(f * f - f * 1.25)
     assert abs(f - lowest - width) < 0.005  # half the last printed digit
     # At the window's lower edge the X wave of frequency f just reflects.
-    assert abs(extraordinary_critical_frequency(lowest, 1.25) - f) < 1e-9
+    edge = extraordinary_critical_frequency(lowest, 1.25)
+    assert abs(edge - f) < 1e-9
+    WINDOW.within(edge - lowest, width)

@@ -16,6 +16,24 @@ import numpy as np
 import pytest
 
 from magion.field import dip, field_at, flux_density, gyrofrequency
+from tests.proof import proves
+
+GYRO = proves(
+    "gyrofrequency from 0 to 300 km",
+    layer="field",
+    kind="derived",
+    source="IGRF-14, synthesized independently",
+    tolerance=0.002,
+    unit="MHz",
+)
+DIP = proves(
+    "dip at 100 km",
+    layer="field",
+    kind="derived",
+    source="IGRF-14, synthesized independently",
+    tolerance=0.05,
+    unit="deg",
+)
 
 ROWS = [
     (52.0, 6.0, (1.385, 1.323, 1.210), 67.10),
@@ -32,8 +50,8 @@ def test_gyrofrequency_and_dip(lat_deg, lon_deg, f_h_mhz, dip_deg):
     found = field_at(
         np.radians(lat_deg), np.radians(lon_deg), HEIGHTS, datetime(2025, 1, 1, tzinfo=UTC)
     )
-    assert np.abs(gyrofrequency(flux_density(found)) / 1e6 - f_h_mhz).max() < 0.002
-    assert abs(np.degrees(dip(found[:, 1])) - dip_deg) < 0.05
+    GYRO.within(gyrofrequency(flux_density(found)) / 1e6, f_h_mhz)
+    DIP.within(np.degrees(dip(found[:, 1])), dip_deg)
 
 
 def test_geographically_north_and_magnetically_south():

@@ -17,6 +17,16 @@ import numpy as np
 import pytest
 
 from magion.field import field_at
+from tests.proof import proves
+
+COMPONENTS = proves(
+    "components of the field, 13th against 14th generation",
+    layer="field",
+    kind="published",
+    source="Alken 2021 (IGRF-13)",
+    tolerance=6.0,
+    unit="nT",
+)
 
 ROWS = [
     (60, 25, 14649.7, 2407.6, 49966.0),
@@ -34,4 +44,4 @@ def test_components(lat_deg, lon_deg, north, east, down):
     found = field_at(
         np.radians(lat_deg), np.radians(lon_deg), 5e3, datetime(2020, 1, 1, tzinfo=UTC)
     )
-    assert np.abs(found * 1e9 - [east, north, -down]).max() < 6.0
+    COMPONENTS.within(found * 1e9, [east, north, -down])

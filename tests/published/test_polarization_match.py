@@ -18,6 +18,23 @@ import numpy as np
 import pytest
 
 from magion.polarization import ellipse, match
+from tests.proof import proves
+
+DECIBELS = proves(
+    "match of two ellipses",
+    layer="polarization",
+    kind="derived",
+    source="standard form; Jones vectors",
+    tolerance=0.005,
+    unit="dB",
+)
+FORM = proves(
+    "match of any two ellipses",
+    layer="polarization",
+    kind="derived",
+    source="standard form",
+    tolerance=1e-13,
+)
 
 ROWS = [
     (True, 0, -0.088, 0.002),
@@ -35,7 +52,7 @@ ROWS = [
 def test_match_in_decibels(same_hand, apart_deg, match_db, tolerance, right, start_deg):
     first = ellipse(2.0, np.radians(start_deg), right)
     second = ellipse(3.0, np.radians(start_deg + apart_deg), right == same_hand)
-    assert abs(10 * np.log10(match(first, second)) - match_db) < tolerance
+    DECIBELS.within(10 * np.log10(match(first, second)), match_db, tolerance)
 
 
 def test_standard_form_everywhere():
@@ -49,4 +66,4 @@ def test_standard_form_everywhere():
         2 * (r1**2 + 1) * (r2**2 + 1)
     )
     found = match(ellipse(r1, first_tilt, first_right), ellipse(r2, second_tilt, second_right))
-    assert np.abs(found - form).max() < 1e-13
+    FORM.within(found, form)

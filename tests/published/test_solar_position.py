@@ -17,6 +17,16 @@ import numpy as np
 import pytest
 
 from magion.geometry import solar_zenith_angle
+from tests.proof import proves
+
+ZENITH = proves(
+    "angle of the sun from the zenith",
+    layer="geometry",
+    kind="published",
+    source="NREL/TP-560-34302, table A5.1",
+    tolerance=0.01,
+    unit="deg",
+)
 
 GEOMETRIC_DEG = 50.1275
 APPARENT_DEG = 50.11
@@ -34,4 +44,4 @@ def test_zenith_angle(when):
     found = np.degrees(solar_zenith_angle(when, np.radians(39.742476), np.radians(-105.1786)))
     assert abs(found - APPARENT_DEG) < 0.05
     # The formulas used claim 0.01 degrees of geometric position.
-    assert abs(found - GEOMETRIC_DEG) < 0.01
+    ZENITH.within(found, GEOMETRIC_DEG)

@@ -12,11 +12,22 @@ import numpy as np
 import pytest
 
 from magion.ionosphere.collisions import electron_neutral
+from tests.proof import proves
+
+NEUTRALS = proves(
+    "electron-neutral collision frequency",
+    layer="ionosphere",
+    kind="published",
+    source="Wait and Spies 1964",
+    tolerance=0.05e6,
+    unit="s⁻¹",
+    scale=1000000.0,
+)
 
 
 @pytest.mark.parametrize(("height_km", "nu"), [(70, 5.0e6), (80, 1.1e6)])
 def test_collision_frequency(height_km, nu):
-    assert abs(electron_neutral(height_km * 1e3) - nu) < 0.05e6  # half the last printed digit
+    NEUTRALS.within(electron_neutral(height_km * 1e3), nu)  # half the last printed digit
 
 
 def test_falls_by_e_in_a_scale_height():

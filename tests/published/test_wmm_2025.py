@@ -18,6 +18,32 @@ import numpy as np
 import pytest
 
 from magion.field import declination, dip, field_at
+from tests.proof import proves
+
+COMPONENTS = proves(
+    "components of the field against another model",
+    layer="field",
+    kind="published",
+    source="World Magnetic Model 2025",
+    tolerance=60.0,
+    unit="nT",
+)
+DIP = proves(
+    "dip against another model",
+    layer="field",
+    kind="published",
+    source="World Magnetic Model 2025",
+    tolerance=0.15,
+    unit="deg",
+)
+DECLINATION = proves(
+    "declination against another model",
+    layer="field",
+    kind="published",
+    source="World Magnetic Model 2025",
+    tolerance=0.15,
+    unit="deg",
+)
 
 ROWS = [
     (2025.0, 0, 80, 0, 6521.6, 145.9, 54791.5, 83.21, 1.28),
@@ -45,6 +71,6 @@ def test_components_dip_and_declination(
     year, height_km, lat_deg, lon_deg, north, east, down, dip_deg, decl_deg
 ):
     found = field_at(np.radians(lat_deg), np.radians(lon_deg), height_km * 1e3, instant(year))
-    assert np.abs(found * 1e9 - [east, north, -down]).max() < 60.0
-    assert abs(np.degrees(dip(found)) - dip_deg) < 0.15
-    assert abs(np.degrees(declination(found)) - decl_deg) < 0.15
+    COMPONENTS.within(found * 1e9, [east, north, -down])
+    DIP.within(np.degrees(dip(found)), dip_deg)
+    DECLINATION.within(np.degrees(declination(found)), decl_deg)
