@@ -29,7 +29,7 @@ HUT = parse_place("46.50,11.35")
 DAY = datetime(2026, 6, 21, tzinfo=UTC)
 
 
-def contacts(count=24, seed=5):
+def contacts(count=14, seed=5):
     """Rows of three paths, two of them near and one of 1200 km, and a bad one."""
     generator = np.random.default_rng(seed)
     ends = [parse_place(p) for p in ("47.10,10.85", "45.80,12.90", "55.0,2.0")]
@@ -38,14 +38,14 @@ def contacts(count=24, seed=5):
         if i == 7:
             rows.append(BadRow(line=i + 2, reason="broken"))
             continue
-        minute = int(generator.integers(8, 12)) * 60 + int(generator.integers(-25, 25))
+        minute = int(generator.integers(9, 11)) * 60 + int(generator.integers(-25, 25))
         rows.append(
             Contact(
                 line=i + 2,
                 time=DAY + timedelta(minutes=minute),
                 transmitter=ends[int(generator.integers(3))],
                 receiver=HUT,
-                frequency_mhz=float(generator.choice([3.65, 5.3, 9.9])),
+                frequency_mhz=float(generator.choice([5.3, 9.9])),
             )
         )
     return rows
@@ -61,13 +61,13 @@ def written(rows):
 
 
 def test_order_and_bad_rows_are_kept(swept):
-    assert [getattr(r, "line", None) or r.contact.line for r in swept] == list(range(2, 26))
+    assert [getattr(r, "line", None) or r.contact.line for r in swept] == list(range(2, 16))
     assert [r.reason for r in swept if isinstance(r, BadRow)] == ["broken"]
 
 
 def test_rows_agree_with_the_path_alone(swept):
     rows = [r for r in swept if isinstance(r, SweepRow)]
-    for row in (rows[0], rows[5], rows[11], rows[-1]):
+    for row in (rows[0], rows[5], rows[-1]):
         c = row.contact
         when = datetime.fromisoformat(row.answered_for_utc)
         assert abs(when - c.time) <= timedelta(minutes=30)
@@ -104,7 +104,7 @@ def test_a_cluster_that_loses_a_worker_changes_nothing(swept):
     ) as cluster:
         pids = [w.pid for w in cluster.workers.values()]
         with Cluster(cluster.scheduler_address) as engine:
-            stream = sweep(contacts(), SKY, engine=_killing(engine, pids[0]), portion=12)
+            stream = sweep(contacts(), SKY, engine=_killing(engine, pids[0]), portion=7)
             assert written(stream) == written(swept)
         # the worker that was ended is gone or replaced; its work was done by others
         assert pids[0] not in [w.pid for w in cluster.workers.values() if _alive(w.pid)]
