@@ -18,8 +18,8 @@ from magion.answers.day import (
     rays_of,
 )
 from magion.answers.inputs import IonosphereInput, instant, require_frequency
-from magion.answers.modes import ModeRay, require_length
-from magion.answers.reception import RelayAt, at_antenna, positions_on_path, relay_at
+from magion.answers.modes import ModeRay, require_length, stronger
+from magion.answers.reception import RelayAt, at_antenna, choice, positions_on_path, relay_at
 from magion.answers.scene import Scene, scene_of
 from magion.antenna.station import Station
 from magion.arrays import FloatArray
@@ -369,11 +369,11 @@ def _cell(
     served: tuple[str, ...] = ()
     if heard:
         best = max(h.strength_db for h in heard)
-        near = [h for h in heard if h.strength_db >= best - WITHIN_DB]
-        taken = max(near, key=lambda h: min(h.parted_db, 60.0) + 1e-3 * h.strength_db)
-        served = tuple(h.label for h in near if h.parted_db >= PARTED_DB)
-        wave, receive = taken.mode, taken.label
-        level, rejection = leading[taken.mode].level_db, taken.rejection_db
+        served = tuple(
+            h.label for h in heard if h.strength_db >= best - WITHIN_DB and h.parted_db >= PARTED_DB
+        )
+        wave, receive, rejection = _taken(leading, relay, frequency, control)
+        level = leading[wave].level_db
     both = mufs.any_layer[:, hour]
     muf = both[MODES.index(wave)] if wave else (np.nan if np.isnan(both).all() else np.nanmax(both))
     margin = (float(muf) - frequency) / 1e6
@@ -393,15 +393,26 @@ def _cell(
     )
 
 
+def _taken(
+    leading: dict[Mode, ModeRay], relay: RelayAt | None, frequency: float, control: Place
+) -> tuple[Mode, str, float | None]:
+    """The wave to take, its position or hand, and the rejection: as a path's answer has them."""
+    here = None if relay is None else at_antenna(leading, control, frequency)
+    if relay is None or here is None:
+        mode = stronger(leading)
+        return mode, hand_of(leading[mode].down.waves()[MODES.index(mode)]).value, None
+    found = positions_on_path(relay, here)
+    best = choice(tuple(found[p] for p in relay.station.relay), here)
+    return best.wave, best.receive.label, best.receive.rejection_db(best.wave)
+
+
 @dataclass(frozen=True, slots=True, kw_only=True)
 class _Heard:
     """What one relay position, or hand, hears of a partner."""
 
     label: str
-    mode: Mode
     strength_db: float
     parted_db: float
-    rejection_db: float | None
 
 
 def _heard(
@@ -426,10 +437,8 @@ def _heard(
             found.append(
                 _Heard(
                     label=hand.value,
-                    mode=mode,
                     strength_db=own[mode],
                     parted_db=parted,
-                    rejection_db=None,
                 )
             )
         return found
@@ -450,10 +459,8 @@ def _heard(
         found.append(
             _Heard(
                 label=position.label,
-                mode=mode,
                 strength_db=strength[mode],
                 parted_db=strength[mode] - max(rest) if rest else math.inf,
-                rejection_db=position.rejection_db(mode),
             )
         )
     return found

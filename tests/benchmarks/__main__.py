@@ -2,7 +2,7 @@
 
 import sys
 
-from tests.benchmarks import antenna, faces, rays, sky, sweep, waves
+from tests.benchmarks import antenna, faces, planning, rays, sky, sweep, waves
 
 GROUPS = {
     "rays": rays.rows,
@@ -10,6 +10,7 @@ GROUPS = {
     "sky": sky.rows,
     "antenna": antenna.rows,
     "sweep": sweep.rows,
+    "planning": planning.rows,
     "faces": faces.rows,
 }
 

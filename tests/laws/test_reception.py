@@ -22,7 +22,33 @@ from magion.geometry import parse_place
 from magion.ground import AVERAGE, CLASSES, PERFECT
 from magion.polarization import Hand
 from magion.waves import MODES, Mode
+from tests.proof import proves
 from tests.stations import LEFT, RIGHT, WIRES, station
+
+LOW = proves(
+    "response of a station to both waves of a low path",
+    layer="answers",
+    kind="derived",
+    source="signs and ellipses of both waves",
+    tolerance=0.5,
+    unit="dB",
+)
+ELLIPSES = proves(
+    "rejection by a whole station, limited by the ellipse",
+    layer="answers",
+    kind="derived",
+    source="(r + 1)/(r − 1) of ideal antennas",
+    tolerance=0.5,
+    unit="dB",
+)
+GAINED = proves(
+    "level heard and sent over one dipole",
+    layer="answers",
+    kind="derived",
+    source="(1 + r)²/(2 r²) of ideal antennas",
+    tolerance=0.1,
+    unit="dB",
+)
 
 NIGHT, NOON = datetime(2026, 12, 21, 1, tzinfo=UTC), datetime(2026, 6, 21, 12, tzinfo=UTC)
 F2_ALONE = IonosphereInput(fof2_mhz=6.5, hmf2_km=300.0, foe_mhz=1.0)
@@ -102,7 +128,7 @@ def test_low_path_from_the_north():
     left = position(answer, "left")
     assert left.overhead_hand is Hand.LEFT
     # the position of the wave's own letter hears the other wave better
-    assert abs(left.ordinary_over_extraordinary_db + 5.0) < 0.5
+    LOW.within(left.ordinary_over_extraordinary_db, -5.0)
     assert position(answer, "right").ordinary_over_extraordinary_db < -3.0
     assert "Circular is the wrong choice here" in said(answer)
 
@@ -174,9 +200,9 @@ def test_circular_is_the_wrong_choice_near_the_dip_equator():
     # Of ellipses of axial ratio r a circular antenna parts (r + 1)/(r − 1), a wire along it r.
     r = 10.0 ** (answer.waves[0].axial_ratio_db / 20.0)
     circular = 20.0 * math.log10((r + 1.0) / (r - 1.0))
-    assert answer.advice.rejection_db.ordinary == pytest.approx(circular, abs=0.3)
+    ELLIPSES.within(answer.advice.rejection_db.ordinary, circular, 0.3)
     wire = next(a for a in answer.antenna.arms if a.label == "N")
-    assert wire.rejection_db(Mode.ORDINARY) == pytest.approx(20.0 * math.log10(r), abs=0.3)
+    ELLIPSES.within(wire.rejection_db(Mode.ORDINARY), 20.0 * math.log10(r), 0.3)
 
 
 def test_the_wire_is_taken_where_the_relay_has_it():
@@ -204,13 +230,12 @@ def test_an_ideal_station_overhead():
     ratios = [10.0 ** (w.axial_ratio_db / 20.0) for w in answer.waves]
     # Of opposite ellipses (r + 1)/(r − 1); the two come a quarter of a degree apart.
     limit = 20.0 * math.log10((ratios[0] + 1.0) / (ratios[0] - 1.0))
-    assert answer.advice.rejection_db.ordinary == pytest.approx(limit, abs=0.5)
+    ELLIPSES.within(answer.advice.rejection_db.ordinary, limit)
     assert answer.advice.limited_by == "ellipticity of the wave"
     # Circular against one wire, both matched: (1 + r)² / (2 r²) at either end.
     gained = 10.0 * math.log10((1.0 + ratios[0]) ** 2 / (2.0 * ratios[0] ** 2))
     antenna = answer.antenna
-    assert antenna.level_over_dipole_db == pytest.approx(gained, abs=0.1)
-    assert antenna.sent_over_dipole_db == pytest.approx(gained, abs=0.1)
+    GAINED.within([antenna.level_over_dipole_db, antenna.sent_over_dipole_db], gained)
     assert antenna.both_ends_db == pytest.approx(
         antenna.level_over_dipole_db + antenna.sent_over_dipole_db
     )
