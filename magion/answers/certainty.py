@@ -281,7 +281,12 @@ def changes(
             share = gap[i] / (gap[i] - gap[i + 1])
             step = hours[i + 1] - hours[i]
             slope = abs(gap[i + 1] - gap[i]) / step
-            spread = float(relative_deviation[i] * frequency / slope) * 60.0
+            deviation = (1.0 - share) * relative_deviation[i] + share * relative_deviation[i + 1]
+            if wave == 1:
+                # fx² − fx f_H = fo²: dfx / fx = 2 (1 − y) / (2 − y) dfo / fo, y = f_H / fx
+                y = min(gyro_limit / frequency, 1.0)
+                deviation *= 2.0 * (1.0 - y) / (2.0 - y)
+            spread = float(deviation * frequency / slope) * 60.0
             told = spread <= _LONGEST_DOUBT and bool(by_f[wave, i] and by_f[wave, i + 1])
             events.append(
                 (

@@ -353,7 +353,7 @@ def _caveats(
 
 
 def interpolated_mufs(scene: Scene, minutes: FloatArray, least_step_min: float) -> PathMufs:
-    """MUFs of every hour of a scene; between traced ones their ratio to foF2 is interpolated.
+    """MUFs of every hour of a scene; between traced ones their ratio to foF2, fxF2 runs evenly.
 
     Parameters
     ----------
@@ -378,16 +378,17 @@ def interpolated_mufs(scene: Scene, minutes: FloatArray, least_step_min: float) 
         return path_mufs(scene, hops)
     traced = path_mufs(scene, hops, hours=chosen)
     fof2 = np.array([o.fof2 for o in scene.overheads])
+    critical = (fof2, extraordinary_critical_frequency(fof2, scene.gyro_limit))
     found = []
     for values in (traced.any_layer, traced.f_region):
         rows = []
-        for row in values:
-            ratio = row / fof2[chosen]
+        for row, base in zip(values, critical, strict=True):
+            ratio = row / base[chosen]
             good = np.isfinite(ratio)
             if not good.any():
                 rows.append(np.full(minutes.size, np.nan))
                 continue
-            full = np.interp(minutes, minutes[chosen][good], ratio[good]) * fof2
+            full = np.interp(minutes, minutes[chosen][good], ratio[good]) * base
             # A step between two without a MUF has none either.
             near = np.interp(minutes, minutes[chosen], good.astype(float))
             rows.append(np.where(near > 0.0, full, np.nan))
@@ -422,7 +423,6 @@ def rays_of(
     scene: Scene,
     frequencies: list[float],
     mufs: PathMufs,
-    searched: int = 24,
     only: set[tuple[float, int]] | None = None,
 ) -> list[list[dict[Mode, ModeRay]]]:
     """The leading rays of every frequency and hour.
@@ -435,8 +435,6 @@ def rays_of(
         Frequencies [Hz].
     mufs : PathMufs
         MUFs of every hour; what lies well above them is not traced.
-    searched : int
-        How many cases without a ray below the MUF are searched patiently [1].
     only : set of (float, int), optional
         Frequencies [Hz] and hours that are wanted; all of them if not given.
 
@@ -464,7 +462,7 @@ def rays_of(
         if not rays and float(mufs.any_layer[MODES.index(mode), hour]) >= f:
             missing.append((f, hour))
     # A wave below its MUF without a ray in the coarse fan is looked for patiently.
-    for f, hour in list(dict.fromkeys(missing))[:searched]:
+    for f, hour in dict.fromkeys(missing):
         modes = MODES if f > scene.gyro_limit else (Mode.ORDINARY,)
         found[f, hour] = [
             r for r in find_modes(scene, f, modes, hour).rays if len(set(r.sequence)) == 1
@@ -636,7 +634,9 @@ def _plan(
             if abs(datetime.fromisoformat(e.time_utc) - middle) <= timedelta(minutes=step_min)
         ]
         if state[i] != state[i - 1] and near:
-            event = min(near, key=lambda e: abs(datetime.fromisoformat(e.time_utc) - middle))
+            # Of several, the one that makes the new state.
+            made = [e for e in near if e.state == state[i]] or near
+            event = min(made, key=lambda e: abs(datetime.fromisoformat(e.time_utc) - middle))
             verb = "comes" if event.comes else "goes"
             reason = f"the {event.wave} wave {verb}: {_word(state[i])}"
             at = datetime.fromisoformat(event.time_utc)

@@ -343,7 +343,7 @@ def _cells(
     minutes = np.array([(m - midnight).total_seconds() / 60.0 for m in moments])
     mufs = interpolated_mufs(scene, minutes, _MUF_STEP_MIN)
     gyro = gyro_at_peaks(scene, moments[0])
-    found = rays_of(scene, frequencies, mufs, searched=2)
+    found = rays_of(scene, frequencies, mufs)
     out: list[list[NetCell]] = []
     for h in range(len(moments)):
         row = []

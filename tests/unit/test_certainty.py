@@ -214,11 +214,12 @@ def test_changes_of_a_muf_that_rises_and_falls_in_straight_lines():
 
 
 def test_changes_between_half_hours():
-    # from 6.9 to 7.3 MHz in half an hour: 7.1 is crossed after 15 min; ± 0.05 * 7.1 / 0.8 h
+    # from 6.9 to 7.3 MHz in half an hour: 7.1 is crossed after 15 min, half-way between both
+    # deviations; ± 0.125 * 7.1 / 0.8 h
     moments, mufs = day([6.9, 7.3], [8.0, 8.0], minutes=30)
     (found,) = changes(moments, mufs, 7.1e6, np.array([0.05, 0.2]))
     assert abs(seconds(found) - 900.0) <= 1.0
-    assert found.plus_minus_min == pytest.approx(26.625)
+    assert found.plus_minus_min == pytest.approx(66.5625)
     assert found.state == "both"
 
 
